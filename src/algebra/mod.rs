@@ -1,0 +1,10 @@
+//! Exact arithmetic: polynomials, rational functions, determinants, roots. Knows nothing of netlists.
+
+mod fraction;
+mod poly;
+pub mod solve;
+
+pub use dashu_int::{IBig, UBig};
+pub use dashu_ratio::RBig;
+pub use fraction::Fraction;
+pub use poly::{Poly, Var};

@@ -1,0 +1,163 @@
+//! Results as plain data: made once, rendered many times. The JSON documents are these types, key by key.
+
+use crate::algebra::Poly;
+use crate::diagnostics::{Code, Severity};
+use schemars::JsonSchema;
+use serde::Serialize;
+
+/// A diagnostic as JSON tells it.
+#[derive(Clone, Debug, PartialEq, Serialize, JsonSchema)]
+pub struct ToldDiagnostic {
+    /// The code's word.
+    pub code: Code,
+    /// How much it weighs.
+    pub severity: Severity,
+    /// What is wrong.
+    pub message: String,
+    /// How to mend it.
+    pub help: Option<String>,
+    /// The places, the primary one first.
+    pub labels: Vec<ToldLabel>,
+}
+
+/// A labelled place as JSON tells it; lines and columns count from 1, columns and lengths in Unicode scalar values.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, JsonSchema)]
+pub struct ToldLabel {
+    /// The file as the user named it.
+    pub file: String,
+    /// Line, from 1.
+    pub line: usize,
+    /// Column, from 1.
+    pub column: usize,
+    /// Length.
+    pub length: usize,
+    /// What to say there.
+    pub text: String,
+}
+
+/// What `check` gives.
+#[derive(Clone, Debug, PartialEq, Serialize, JsonSchema)]
+pub struct Check {
+    /// `loopwright.check.1`
+    pub schema: &'static str,
+    /// Whether no diagnostic is an error.
+    pub ok: bool,
+    /// All diagnostics.
+    pub diagnostics: Vec<ToldDiagnostic>,
+}
+
+/// What `derive` gives.
+#[derive(Clone, Debug, Serialize, JsonSchema)]
+pub struct Derive {
+    /// `loopwright.derive.1`
+    pub schema: &'static str,
+    /// The model's name.
+    pub model: String,
+    /// Whether no diagnostic is an error.
+    pub ok: bool,
+    /// All diagnostics.
+    pub diagnostics: Vec<ToldDiagnostic>,
+    /// The results, in the order of the requests.
+    pub transfers: Vec<Transfer>,
+}
+
+/// Which kind of request a [`Transfer`] answers.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, JsonSchema)]
+#[serde(rename_all = "lowercase")]
+pub enum TransferKind {
+    /// `y / x`
+    Transfer,
+    /// `loop at u`
+    Loop,
+    /// `zeros …`
+    Zeros,
+}
+
+/// One term coefficient · s^power · exp(-delay·s).
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, JsonSchema)]
+pub struct ExactTerm {
+    /// Power of s or z.
+    pub power: u32,
+    /// Dead time in seconds, exact.
+    pub delay: String,
+    /// Its coefficient, exact.
+    pub coefficient: String,
+}
+
+/// A pole or a zero.
+#[derive(Clone, Copy, Debug, PartialEq, Serialize, JsonSchema)]
+pub struct Root {
+    /// Real part.
+    pub re: f64,
+    /// Imaginary part.
+    pub im: f64,
+    /// How often it counts.
+    pub multiplicity: u32,
+}
+
+/// Coefficients in decimals, from the highest power down.
+#[derive(Clone, Debug, PartialEq, Serialize, JsonSchema)]
+pub struct Decimal {
+    /// Of the numerator.
+    pub numerator: Vec<f64>,
+    /// Of the denominator.
+    pub denominator: Vec<f64>,
+}
+
+/// One exact result.
+#[derive(Clone, Debug, Serialize, JsonSchema)]
+pub struct Transfer {
+    /// Which kind of request it answers.
+    pub kind: TransferKind,
+    /// The signal that answers, as written.
+    pub to: String,
+    /// Where the test signal is added, as written; `loop at u` for a return ratio.
+    pub from: String,
+    /// The signals at which the loop is cut for a return ratio.
+    pub at: Vec<String>,
+    /// The signals that are cut besides.
+    pub open: Vec<String>,
+    /// The params that stay symbols.
+    pub kept: Vec<String>,
+    /// The case.
+    pub case: String,
+    /// `s` or `z`.
+    pub variable: &'static str,
+    /// In seconds, exact; null for continuous time.
+    pub sampling_period: Option<String>,
+    /// Whether numerator and denominator are exact.
+    pub exact: bool,
+    /// Terms of the numerator, by delay up, then power down.
+    pub numerator: Option<Vec<ExactTerm>>,
+    /// Terms of the denominator.
+    pub denominator: Option<Vec<ExactTerm>>,
+    /// Coefficients in decimals where there is no delay and no kept symbol.
+    pub decimal: Option<Decimal>,
+    /// Factors that were cancelled, monic, each as often as its multiplicity.
+    pub cancelled: Vec<String>,
+    /// Roots of the denominator.
+    pub poles: Option<Vec<Root>>,
+    /// Roots of the numerator.
+    pub zeros: Option<Vec<Root>>,
+    /// Value at s = 0 or z = 1.
+    pub dc_gain: Option<f64>,
+    /// The largest real part of a pole; absent for sampled results.
+    pub converges_right_of: Option<f64>,
+    /// Whether every pole lies strictly left of the axis or inside the circle.
+    pub stable: Option<bool>,
+    /// The same in polynomials, for rendering.
+    #[serde(skip)]
+    #[schemars(skip)]
+    pub form: Option<Form>,
+}
+
+/// The exact polynomials behind a [`Transfer`], with what their variables are called.
+#[derive(Clone, Debug)]
+pub struct Form {
+    /// Numerator.
+    pub numerator: Poly,
+    /// Denominator.
+    pub denominator: Poly,
+    /// Variables with their names: params, π, dead times (`exp(-0.1*s)`).
+    pub names: Vec<(crate::algebra::Var, String)>,
+}
