@@ -81,7 +81,8 @@ impl Poly {
     pub fn terms(&self) -> impl Iterator<Item = (Vec<(Var, u32)>, IBig)> + '_ {
         let vars = self.variables();
         let mut all: Vec<_> = self.terms.iter().collect();
-        let key = |m: &Monomial| vars.iter().map(|v| m.iter().find(|p| p.0 == *v).map_or(0, |p| p.1)).collect::<Vec<_>>();
+        let key =
+            |m: &Monomial| vars.iter().map(|v| m.iter().find(|p| p.0 == *v).map_or(0, |p| p.1)).collect::<Vec<_>>();
         all.sort_by_key(|(m, _)| std::cmp::Reverse(key(m)));
         all.into_iter().map(|(m, c)| (m.clone(), c.clone()))
     }
@@ -188,7 +189,9 @@ impl Poly {
     }
     /// Greatest common divisor of the coefficients, not negative.
     pub fn content(&self) -> IBig {
-        self.terms.values().fold(IBig::ZERO, |g, c| if g == IBig::ZERO { c.clone().abs() } else { IBig::from(g.gcd(c)) })
+        self.terms
+            .values()
+            .fold(IBig::ZERO, |g, c| if g == IBig::ZERO { c.clone().abs() } else { IBig::from(g.gcd(c)) })
     }
     /// The coefficient of the first term in the order of [`Self::terms`]; 0 for 0.
     pub fn leading_coefficient(&self) -> IBig {

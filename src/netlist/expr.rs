@@ -125,9 +125,12 @@ impl Exprs {
         let (a, b) = match self.get(id) {
             Expr::Ratio(..) | Expr::Number(_) | Expr::Pi | Expr::S | Expr::Z | Expr::Param(_) => (None, None),
             Expr::Neg(a) | Expr::Pow(a, _) | Expr::Delay(a) | Expr::Call(_, a) => (Some(a), None),
-            Expr::Add(a, b) | Expr::Sub(a, b) | Expr::Mul(a, b) | Expr::Div(a, b) | Expr::Min(a, b) | Expr::Max(a, b) => {
-                (Some(a), Some(b))
-            }
+            Expr::Add(a, b)
+            | Expr::Sub(a, b)
+            | Expr::Mul(a, b)
+            | Expr::Div(a, b)
+            | Expr::Min(a, b)
+            | Expr::Max(a, b) => (Some(a), Some(b)),
         };
         a.into_iter().chain(b)
     }
