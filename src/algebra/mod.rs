@@ -1,6 +1,7 @@
 //! Exact arithmetic: polynomials, rational functions, determinants, roots. Knows nothing of netlists.
 
 mod fraction;
+pub mod functions;
 mod poly;
 pub mod solve;
 

@@ -464,6 +464,8 @@ pub struct Netlist {
     pub requirements: Vec<Requirement>,
     /// In what the laws are written.
     pub time_base: TimeBase,
+    /// The case that was put in nominal's place.
+    pub nominal: Option<CaseId>,
 }
 
 impl Netlist {
