@@ -1,5 +1,7 @@
 //! Results as plain data: made once, rendered many times. The JSON documents are these types, key by key.
 
+pub mod mason;
+
 use crate::algebra::Poly;
 use crate::diagnostics::{Code, Severity};
 use schemars::JsonSchema;
@@ -59,6 +61,52 @@ pub struct Derive {
     pub diagnostics: Vec<ToldDiagnostic>,
     /// The results, in the order of the requests.
     pub transfers: Vec<Transfer>,
+    /// With `--characteristic`: the characteristic polynomial of the whole netlist, for each case that was asked for.
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    pub characteristic: Vec<Characteristic>,
+}
+
+/// The characteristic polynomial of a whole netlist, no signal cut.
+#[derive(Clone, Debug, Serialize, JsonSchema)]
+pub struct Characteristic {
+    /// The case.
+    pub case: String,
+    /// The params that stay symbols.
+    pub kept: Vec<String>,
+    /// `s` or `z`.
+    pub variable: &'static str,
+    /// Whether it is exact.
+    pub exact: bool,
+    /// Its terms, ordered as those of a denominator; null where a value was rounded.
+    pub polynomial: Option<Vec<ExactTerm>>,
+    /// Its monic factors, each as often as its multiplicity.
+    pub factors: Vec<String>,
+    /// Each factor that some transfer function of this document does not show, with the requests that it is hidden from.
+    pub hidden: Vec<HiddenFactor>,
+    /// The same in polynomials, for rendering: the denominator is the characteristic polynomial.
+    #[serde(skip)]
+    #[schemars(skip)]
+    pub form: Option<Form>,
+}
+
+/// A factor of the characteristic polynomial that some requests do not show.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, JsonSchema)]
+pub struct HiddenFactor {
+    /// The factor, monic: `s + 2`.
+    pub factor: String,
+    /// The requests whose denominators lack it: `y/r`.
+    pub from: Vec<String>,
+}
+
+/// What `--verify` found of one result.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, JsonSchema)]
+pub struct Verified {
+    /// Whether the signal equations hold with this result at every point tried.
+    pub holds: bool,
+    /// How many points were tried, each modulo a prime of its own.
+    pub points: u32,
+    /// A wrong result would pass with a probability of at most 2^-this.
+    pub bits: u32,
 }
 
 /// Which kind of request a [`Transfer`] answers.
@@ -141,10 +189,17 @@ pub struct Transfer {
     pub zeros: Option<Vec<Root>>,
     /// Value at s = 0 or z = 1.
     pub dc_gain: Option<f64>,
-    /// The largest real part of a pole; absent for sampled results.
-    pub converges_right_of: Option<f64>,
+    /// The largest real part of a pole, or null; absent for sampled results.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub converges_right_of: Option<Option<f64>>,
+    /// The largest modulus of a pole, or null; absent in continuous time.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub converges_outside: Option<Option<f64>>,
     /// Whether every pole lies strictly left of the axis or inside the circle.
     pub stable: Option<bool>,
+    /// With `--verify`: whether the result put back into the signal equations satisfies them.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub verified: Option<Verified>,
     /// The same in polynomials, for rendering.
     #[serde(skip)]
     #[schemars(skip)]

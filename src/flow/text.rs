@@ -1,0 +1,161 @@
+//! Polynomials and fractions as the exact strings of results: `Kp*b + 3`, `10/(s + 2)`, `25/2`.
+
+use crate::algebra::{Fraction, IBig, Poly, RBig, Var};
+use crate::netlist::values::Values;
+use dashu_base::{Abs, Sign, Signed};
+
+/// Names of variables, looked up without an allocation: long symbolic results name some variable a hundred million
+/// times.
+#[derive(Clone, Debug, Default)]
+pub(crate) struct Names {
+    /// By the order of variables.
+    table: Vec<(Var, String)>,
+}
+
+impl Names {
+    /// The names of some variables.
+    pub(crate) fn new(values: &Values<'_>, mut variables: Vec<Var>) -> Self {
+        variables.push(Var::S);
+        variables.sort_unstable();
+        variables.dedup();
+        Self { table: variables.into_iter().map(|v| (v, values.name(v))).collect() }
+    }
+
+    /// The names of all variables that occur in some polynomials.
+    pub(crate) fn of<'p>(values: &Values<'_>, polys: impl IntoIterator<Item = &'p Poly>) -> Self {
+        Self::new(values, polys.into_iter().flat_map(Poly::variables).collect())
+    }
+
+    /// The name of a variable; empty for one that is not in the table.
+    fn get(&self, var: Var) -> &str {
+        self.table.binary_search_by_key(&var, |e| e.0).map_or("", |i| &self.table[i].1)
+    }
+
+    /// Variables with their names, the main variable left out.
+    pub(crate) fn table(&self) -> Vec<(Var, String)> {
+        self.table.iter().filter(|(v, _)| *v != Var::S).cloned().collect()
+    }
+}
+
+/// Appends a term to a sum: its sign, its coefficient (without sign) and its powers.
+fn push_term(out: &mut String, names: &Names, negative: bool, coefficient: &str, powers: &[(Var, u32)]) {
+    out.push_str(match (out.is_empty(), negative) {
+        (true, true) => "-",
+        (true, false) => "",
+        (false, true) => " - ",
+        (false, false) => " + ",
+    });
+    let mut first = true;
+    if powers.is_empty() || coefficient != "1" {
+        out.push_str(coefficient);
+        first = false;
+    }
+    for &(var, power) in powers {
+        if !std::mem::replace(&mut first, false) {
+            out.push('*');
+        }
+        out.push_str(names.get(var));
+        if power > 1 {
+            out.push('^');
+            out.push_str(&power.to_string());
+        }
+    }
+}
+
+/// A polynomial, its terms in descending lexicographic order of exponents.
+pub(crate) fn poly(names: &Names, p: &Poly) -> String {
+    let mut out = String::new();
+    for (powers, c) in p.terms() {
+        let negative = c.sign() == Sign::Negative;
+        push_term(&mut out, names, negative, &c.abs().to_string(), &powers);
+    }
+    if out.is_empty() { "0".to_owned() } else { out }
+}
+
+/// A rational number: `600`, `25/2`.
+pub(crate) fn ratio(value: &RBig) -> String {
+    if *value.denominator() == dashu_int::UBig::ONE {
+        value.numerator().to_string()
+    } else {
+        format!("{}/{}", value.numerator(), value.denominator())
+    }
+}
+
+/// A fraction: `10/(s + 2)`, `s/T`, `3/2*K`.
+pub(crate) fn fraction(names: &Names, f: &Fraction) -> String {
+    let below = f.denominator();
+    let above = poly(names, f.numerator());
+    if below.is_one() {
+        return above;
+    }
+    let above = if f.numerator().len() > 1 { format!("({above})") } else { above };
+    let single = below.len() == 1 && {
+        let (powers, c) = below.terms().next().unwrap_or_default();
+        powers.len() + usize::from(c != IBig::ONE) <= 1
+    };
+    if single { format!("{above}/{}", poly(names, below)) } else { format!("{above}/({})", poly(names, below)) }
+}
+
+/// A polynomial divided by its leading coefficient in the main variable: `s^2 + 2*s + 5`, `s + 1/T`,
+/// `s + 1/2*exp(-s)`.
+pub(crate) fn monic(names: &Names, p: &Poly) -> String {
+    let coefficients = p.coefficients(Var::S);
+    let Some(lead) = coefficients.last() else { return "0".to_owned() };
+    let mut out = String::new();
+    if let Some(lead) = lead.as_constant() {
+        for (powers, c) in p.terms() {
+            let c = RBig::from_parts_signed(c, lead.clone());
+            push_term(&mut out, names, c.is_negative(), &ratio(&c.clone().abs()), &powers);
+        }
+        return out;
+    }
+    for (power, coefficient) in coefficients.iter().enumerate().rev().filter(|(_, c)| !c.is_zero()) {
+        let Some(c) = Fraction::new(coefficient.clone(), lead.clone()) else { continue };
+        let negative = c.numerator().leading_coefficient().sign() == Sign::Negative;
+        let mut text = fraction(names, &if negative { c.neg() } else { c.clone() });
+        if power > 0 && c.numerator().len() > 1 && c.denominator().is_one() {
+            text = format!("({text})");
+        }
+        let powers = if power == 0 { Vec::new() } else { vec![(Var::S, power as u32)] };
+        push_term(&mut out, names, negative, &text, &powers);
+    }
+    out
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn letters() -> Names {
+        Names { table: ["s", "K", "T"].iter().enumerate().map(|(i, n)| (Var(i as u32), (*n).to_owned())).collect() }
+    }
+
+    fn v(i: u32) -> Poly {
+        Poly::var(Var(i))
+    }
+
+    fn c(i: i64) -> Poly {
+        Poly::constant(IBig::from(i))
+    }
+
+    #[test]
+    fn polynomials_and_fractions_read_as_the_contract_says() {
+        let p = v(1).mul(&v(2)).add(&c(3)).sub(&v(1).pow(2));
+        assert_eq!(poly(&letters(), &p), "-K^2 + K*T + 3");
+        let f = Fraction::new(c(10), v(0).add(&c(2))).unwrap_or_else(Fraction::one);
+        assert_eq!(fraction(&letters(), &f), "10/(s + 2)");
+        let f = Fraction::new(v(1), v(2)).unwrap_or_else(Fraction::one);
+        assert_eq!(fraction(&letters(), &f), "K/T");
+        let f = Fraction::new(v(1).add(&c(1)), v(2).scale(&IBig::from(2))).unwrap_or_else(Fraction::one);
+        assert_eq!(fraction(&letters(), &f), "(K + 1)/(2*T)");
+    }
+
+    #[test]
+    fn monic_factors_have_rational_coefficients() {
+        assert_eq!(monic(&letters(), &c(2).mul(&v(0)).add(&c(1))), "s + 1/2");
+        assert_eq!(monic(&letters(), &v(2).mul(&v(0)).add(&c(1))), "s + 1/T");
+        assert_eq!(monic(&letters(), &v(0).pow(2).sub(&c(4))), "s^2 - 4");
+        let p = v(0).pow(2).add(&v(0).mul(&v(1).add(&v(2)))).add(&v(1));
+        assert_eq!(monic(&letters(), &p), "s^2 + K*s + T*s + K");
+    }
+}
