@@ -2,7 +2,9 @@
 
 mod fraction;
 pub mod functions;
+mod gcd;
 mod poly;
+mod prime;
 pub mod solve;
 
 pub use dashu_int::{IBig, UBig};

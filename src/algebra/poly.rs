@@ -1,9 +1,21 @@
 //! Polynomials in several variables with whole coefficients.
+//!
+//! A polynomial carries its own list of variables. The exponents of one term are packed into bit fields just wide
+//! enough for the degrees, one word where that fits, the first variable highest: so comparing words compares
+//! monomials, adding words multiplies them. Terms are sorted, descending. Coefficients are machine words where all fit.
 
-use dashu_base::{Abs, Gcd, Sign};
+pub(crate) mod arithmetic;
+pub(crate) mod coefficients;
+pub(crate) mod dense;
+mod division;
+pub(crate) mod layout;
+mod shape;
+#[cfg(test)]
+pub(crate) mod tests;
+
+use coefficients::Coefficients;
 use dashu_int::IBig;
-use dashu_ratio::RBig;
-use std::collections::BTreeMap;
+use layout::{Field, degrees, layout, repack, same_places, words};
 
 /// A variable. The order of variables is the order of their numbers; a lower number is a higher variable.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash)]
@@ -14,12 +26,15 @@ impl Var {
     pub const S: Self = Self(0);
 }
 
-type Monomial = Vec<(Var, u32)>;
-
 /// A polynomial with whole coefficients, in canonical form: equal polynomials compare equal.
-#[derive(Clone, Debug, PartialEq, Eq, Default)]
+///
+/// Invariants: `fields` has exactly the variables that occur, with their exact degrees, laid out by
+/// [`layout::layout`]; keys are sorted descending, one for each coefficient; no coefficient is 0.
+#[derive(Clone, PartialEq, Eq, Default)]
 pub struct Poly {
-    terms: BTreeMap<Monomial, IBig>,
+    fields: Vec<Field>,
+    keys: Vec<u64>,
+    coefficients: Coefficients,
 }
 
 impl Poly {
@@ -33,110 +48,168 @@ impl Poly {
     }
     /// A whole number as a polynomial.
     pub fn constant(value: IBig) -> Self {
-        let mut terms = BTreeMap::new();
-        if value != IBig::ZERO {
-            terms.insert(Vec::new(), value);
+        if value == IBig::ZERO {
+            return Self::zero();
         }
-        Self { terms }
+        Self { coefficients: Coefficients::from_big(vec![value]), ..Self::default() }
     }
     /// One variable.
     pub fn var(var: Var) -> Self {
-        Self { terms: BTreeMap::from([(vec![(var, 1)], IBig::ONE)]) }
+        Self::monomial(&[(var, 1)], IBig::ONE)
+    }
+    /// One term; the variables rise, a coefficient of 0 gives 0.
+    pub(crate) fn monomial(exponents: &[(Var, u64)], value: IBig) -> Self {
+        if value == IBig::ZERO {
+            return Self::zero();
+        }
+        let fields = layout(exponents.iter().copied());
+        let mut keys = vec![0; words(&fields)];
+        for f in &fields {
+            f.set(&mut keys, f.degree);
+        }
+        Self { fields, keys, coefficients: Coefficients::from_big(vec![value]) }
     }
     /// From terms in any order: each is an exponent for some variables, and a coefficient.
     pub fn from_terms(terms: impl IntoIterator<Item = (Vec<(Var, u32)>, IBig)>) -> Self {
-        let mut out = Self::zero();
-        for (mut m, c) in terms {
-            m.retain(|p| p.1 > 0);
-            m.sort_unstable();
-            out.add_term(m, c);
-        }
-        out
+        let parts: Vec<Self> = terms
+            .into_iter()
+            .map(|(mut m, c)| {
+                m.sort_unstable();
+                let same: Vec<(Var, u64)> = m
+                    .chunk_by(|a, b| a.0 == b.0)
+                    .map(|run| (run[0].0, run.iter().map(|p| u64::from(p.1)).sum()))
+                    .collect();
+                Self::monomial(&same, c)
+            })
+            .collect();
+        Self::sum_of(parts)
     }
-    fn add_term(&mut self, m: Monomial, c: IBig) {
-        let e = self.terms.entry(m).or_default();
-        *e += c;
-        self.terms.retain(|_, c| *c != IBig::ZERO);
+    /// The sum of many, as a balanced tree.
+    pub fn sum_of(mut parts: Vec<Self>) -> Self {
+        while parts.len() > 1 {
+            parts = parts.chunks(2).map(|p| if let [a, b] = p { a.add(b) } else { p[0].clone() }).collect();
+        }
+        parts.pop().unwrap_or_default()
+    }
+    /// Terms sorted descending without zeros, in a layout whose degrees may be too high.
+    pub(crate) fn normalized(mut fields: Vec<Field>, mut keys: Vec<u64>, coefficients: Coefficients) -> Self {
+        if coefficients.len() == 0 {
+            return Self::zero();
+        }
+        let exact = degrees(&keys, &fields);
+        if fields.iter().zip(&exact).any(|(f, d)| f.degree != *d) {
+            let new = layout(fields.iter().zip(&exact).map(|(f, d)| (f.var, *d)));
+            if !same_places(&fields, &new) {
+                keys = repack(&keys, coefficients.len(), &fields, &new);
+            }
+            fields = new;
+        }
+        Self { fields, keys, coefficients }
+    }
+    /// Terms in any order, doubles and zeros among them.
+    pub(crate) fn collected(fields: Vec<Field>, keys: &[u64], values: &[IBig]) -> Self {
+        let w = words(&fields);
+        if w == 0 {
+            return Self::constant(values.iter().sum());
+        }
+        let key = |i: usize| &keys[i * w..(i + 1) * w];
+        let mut order: Vec<usize> = (0..values.len()).collect();
+        order.sort_unstable_by(|&i, &j| key(j).cmp(key(i)));
+        let (mut out, mut sums): (Vec<u64>, Vec<IBig>) = (Vec::with_capacity(keys.len()), Vec::new());
+        for run in order.chunk_by(|&i, &j| key(i) == key(j)) {
+            let c: IBig = run.iter().map(|&i| &values[i]).sum();
+            if c != IBig::ZERO {
+                out.extend_from_slice(key(run[0]));
+                sums.push(c);
+            }
+        }
+        Self::normalized(fields, out, Coefficients::from_big(sums))
     }
     /// Whether it is 0.
     pub fn is_zero(&self) -> bool {
-        self.terms.is_empty()
+        self.coefficients.len() == 0
     }
     /// Whether it is 1.
     pub fn is_one(&self) -> bool {
-        self.as_constant().is_some_and(|c| c == IBig::ONE)
+        self.fields.is_empty() && matches!(&self.coefficients, Coefficients::Small(c) if **c == [1])
+    }
+    /// Whether it is a number.
+    pub fn is_constant(&self) -> bool {
+        self.fields.is_empty()
     }
     /// Its value where it is a number.
     pub fn as_constant(&self) -> Option<IBig> {
         if self.is_zero() {
             return Some(IBig::ZERO);
         }
-        if self.terms.len() == 1 { self.terms.get(&Vec::new()).cloned() } else { None }
+        self.fields.is_empty().then(|| self.coefficients.get(0))
     }
     /// How many terms it has.
     pub fn len(&self) -> usize {
-        self.terms.len()
+        self.coefficients.len()
+    }
+    /// Whether it has no term, which is to say that it is 0.
+    pub fn is_empty(&self) -> bool {
+        self.is_zero()
+    }
+    /// Bits of its greatest coefficient.
+    pub fn bits(&self) -> usize {
+        self.coefficients.bits()
+    }
+    /// The packed exponents of term `i`.
+    pub(crate) fn key(&self, i: usize) -> &[u64] {
+        let w = words(&self.fields);
+        &self.keys[i * w..(i + 1) * w]
+    }
+    /// Where the exponents stand.
+    pub(crate) fn fields(&self) -> &[Field] {
+        &self.fields
+    }
+    /// All packed exponents.
+    pub(crate) fn keys(&self) -> &[u64] {
+        &self.keys
+    }
+    /// All coefficients.
+    pub(crate) fn values(&self) -> &Coefficients {
+        &self.coefficients
     }
     /// Its terms in descending lexicographic order of exponents: exponents of the variables that occur, coefficient.
     pub fn terms(&self) -> impl Iterator<Item = (Vec<(Var, u32)>, IBig)> + '_ {
-        let vars = self.variables();
-        let mut all: Vec<_> = self.terms.iter().collect();
-        let key =
-            |m: &Monomial| vars.iter().map(|v| m.iter().find(|p| p.0 == *v).map_or(0, |p| p.1)).collect::<Vec<_>>();
-        all.sort_by_key(|(m, _)| std::cmp::Reverse(key(m)));
-        all.into_iter().map(|(m, c)| (m.clone(), c.clone()))
+        (0..self.len()).map(|i| {
+            let key = self.key(i);
+            let exponents = self.fields.iter().map(|f| (f.var, narrow(f.get(key)))).filter(|p| p.1 > 0).collect();
+            (exponents, self.coefficients.get(i))
+        })
     }
     /// The variables that occur, in their order.
     pub fn variables(&self) -> Vec<Var> {
-        let mut v: Vec<Var> = self.terms.keys().flatten().map(|p| p.0).collect();
-        v.sort_unstable();
-        v.dedup();
-        v
+        self.fields.iter().map(|f| f.var).collect()
     }
-    /// Degree in one variable; 0 for the polynomial 0.
+    /// Degree in one variable; 0 for the polynomial 0. Degrees beyond 32 bits, which [`super::solve`] refuses, show
+    /// as the greatest of 32 bits.
     pub fn degree(&self, var: Var) -> u32 {
-        self.terms.keys().filter_map(|m| m.iter().find(|p| p.0 == var)).map(|p| p.1).max().unwrap_or(0)
+        narrow(self.degree_of(var))
     }
-    /// Coefficients as a polynomial in one variable, from the power 0 up; empty for 0.
-    pub fn coefficients(&self, var: Var) -> Vec<Self> {
-        if self.is_zero() {
-            return Vec::new();
-        }
-        let mut out = vec![Self::zero(); self.degree(var) as usize + 1];
-        for (m, c) in &self.terms {
-            let k = m.iter().find(|p| p.0 == var).map_or(0, |p| p.1);
-            let rest = m.iter().copied().filter(|p| p.0 != var).collect();
-            out[k as usize].terms.insert(rest, c.clone());
-        }
-        out
+    pub(crate) fn degree_of(&self, var: Var) -> u64 {
+        self.field(var).map_or(0, |f| f.degree)
     }
-    /// The polynomial with these coefficients in one variable, from the power 0 up.
-    pub fn from_coefficients(var: Var, coefficients: &[Self]) -> Self {
-        let mut out = Self::zero();
-        for (k, c) in coefficients.iter().enumerate() {
-            out = out.add(&c.mul(&Self::var(var).pow(k as u32)));
-        }
-        out
+    pub(crate) fn field(&self, var: Var) -> Option<&Field> {
+        self.fields.iter().find(|f| f.var == var)
     }
     /// Sum.
     #[must_use]
     pub fn add(&self, other: &Self) -> Self {
-        let mut out = self.clone();
-        for (m, c) in &other.terms {
-            *out.terms.entry(m.clone()).or_default() += c;
-        }
-        out.terms.retain(|_, c| *c != IBig::ZERO);
-        out
+        arithmetic::sum(self, other, false)
     }
     /// Difference.
     #[must_use]
     pub fn sub(&self, other: &Self) -> Self {
-        self.add(&other.neg())
+        arithmetic::sum(self, other, true)
     }
     /// The negative.
     #[must_use]
     pub fn neg(&self) -> Self {
-        self.scale(&IBig::NEG_ONE)
+        Self { fields: self.fields.clone(), keys: self.keys.clone(), coefficients: self.coefficients.negated() }
     }
     /// Product with a whole number.
     #[must_use]
@@ -144,107 +217,101 @@ impl Poly {
         if *by == IBig::ZERO {
             return Self::zero();
         }
-        Self { terms: self.terms.iter().map(|(m, c)| (m.clone(), c * by)).collect() }
+        Self { fields: self.fields.clone(), keys: self.keys.clone(), coefficients: self.coefficients.scaled(by) }
     }
     /// Product.
     #[must_use]
     pub fn mul(&self, other: &Self) -> Self {
-        let mut out = Self::zero();
-        for (a, x) in &self.terms {
-            for (b, y) in &other.terms {
-                let mut m: BTreeMap<Var, u32> = a.iter().copied().collect();
-                for &(v, e) in b {
-                    *m.entry(v).or_default() += e;
-                }
-                *out.terms.entry(m.into_iter().collect()).or_default() += x * y;
-            }
+        if self.is_zero() || other.is_zero() {
+            return Self::zero();
         }
-        out.terms.retain(|_, c| *c != IBig::ZERO);
-        out
+        if self.is_one() {
+            return other.clone();
+        }
+        if other.is_one() {
+            return self.clone();
+        }
+        arithmetic::product(self, other)
     }
-    /// Whole power.
+    /// Whole power, by squaring; the power 0 is 1.
     #[must_use]
     pub fn pow(&self, exponent: u32) -> Self {
-        (0..exponent).fold(Self::one(), |p, _| p.mul(self))
-    }
-    /// Quotient where the division leaves nothing over, `None` otherwise.
-    pub fn div_exact(&self, divisor: &Self) -> Option<Self> {
-        let (lead, lc) = divisor.terms().next()?;
-        let (mut rest, mut out) = (self.clone(), Self::zero());
-        loop {
-            let Some((m, c)) = rest.terms().next() else { break };
-            let mut q: BTreeMap<Var, u32> = m.into_iter().collect();
-            for &(v, e) in &lead {
-                let have = q.entry(v).or_default();
-                *have = have.checked_sub(e)?;
-            }
-            if &c % &lc != IBig::ZERO {
-                return None;
-            }
-            let t = Self::from_terms([(q.into_iter().collect(), c / &lc)]);
-            rest = rest.sub(&t.mul(divisor));
-            out = out.add(&t);
+        if let ([_, ..], 1) = (&self.fields[..], self.len()) {
+            let powers: Vec<_> = self.fields.iter().map(|f| (f.var, f.degree * u64::from(exponent))).collect();
+            return Self::monomial(&powers, self.coefficients.get(0).pow(exponent as usize));
         }
-        Some(out)
+        let mut out = Self::one();
+        for bit in (0..32 - exponent.leading_zeros()).rev() {
+            out = out.mul(&out);
+            if exponent >> bit & 1 == 1 {
+                out = out.mul(self);
+            }
+        }
+        out
+    }
+    /// Quotient where the division leaves nothing over, `None` otherwise (also for a divisor 0).
+    pub fn div_exact(&self, divisor: &Self) -> Option<Self> {
+        if divisor.is_zero() {
+            return None;
+        }
+        if self.is_zero() || divisor.is_one() {
+            return Some(self.clone());
+        }
+        division::quotient(self, divisor)
+    }
+    /// All coefficients divided by a number that divides them.
+    pub(crate) fn div_number(&self, by: &IBig) -> Option<Self> {
+        let coefficients = self.coefficients.divided(by)?;
+        Some(Self { fields: self.fields.clone(), keys: self.keys.clone(), coefficients })
     }
     /// Greatest common divisor of the coefficients, not negative.
     pub fn content(&self) -> IBig {
-        self.terms
-            .values()
-            .fold(IBig::ZERO, |g, c| if g == IBig::ZERO { c.clone().abs() } else { IBig::from(g.gcd(c)) })
+        self.coefficients.content()
     }
     /// The coefficient of the first term in the order of [`Self::terms`]; 0 for 0.
     pub fn leading_coefficient(&self) -> IBig {
-        self.terms().next().map_or(IBig::ZERO, |t| t.1)
+        if self.is_zero() { IBig::ZERO } else { self.coefficients.get(0) }
+    }
+    /// Whether the first coefficient is negative.
+    pub(crate) fn is_negative(&self) -> bool {
+        !self.is_zero() && self.coefficients.is_negative(0)
+    }
+    /// Divided by its content, the leading coefficient positive; 0 stays 0.
+    #[must_use]
+    pub fn primitive(&self) -> Self {
+        if self.is_zero() {
+            return Self::zero();
+        }
+        let mut content = self.content();
+        if self.is_negative() {
+            content = -content;
+        }
+        self.div_number(&content).unwrap_or_default()
     }
     /// Greatest common divisor, its leading coefficient positive; the numbers' own included.
     #[must_use]
     pub fn gcd(&self, other: &Self) -> Self {
-        fn positive(p: Poly) -> Poly {
-            if p.leading_coefficient().sign() == Sign::Negative { p.neg() } else { p }
-        }
+        super::gcd::gcd(self, other)
+    }
+}
+
+impl std::fmt::Debug for Poly {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         if self.is_zero() {
-            return positive(other.clone());
+            return f.write_str("0");
         }
-        if other.is_zero() {
-            return positive(self.clone());
-        }
-        let Some(v) = self.variables().into_iter().chain(other.variables()).min() else {
-            return Self::constant(IBig::from(self.content().gcd(&other.content())));
-        };
-        let content = |p: &Self| p.coefficients(v).iter().fold(Self::zero(), |g, c| g.gcd(c));
-        let (ca, cb) = (content(self), content(other));
-        let common = ca.gcd(&cb);
-        let (mut a, mut b) = (self.div_exact(&ca).unwrap_or_default(), other.div_exact(&cb).unwrap_or_default());
-        if a.degree(v) < b.degree(v) {
-            std::mem::swap(&mut a, &mut b);
-        }
-        while !b.is_zero() {
-            if b.degree(v) == 0 {
-                return common;
+        for (i, (exponents, c)) in self.terms().enumerate() {
+            let plus = if i > 0 && c > IBig::ZERO { "+" } else { "" };
+            write!(f, "{plus}{c}")?;
+            for (v, e) in exponents {
+                write!(f, "*v{}^{e}", v.0)?;
             }
-            let lead = b.coefficients(v).pop().unwrap_or_default();
-            let mut r = a;
-            while !r.is_zero() && r.degree(v) >= b.degree(v) {
-                let top = r.coefficients(v).pop().unwrap_or_default();
-                let shift = Self::var(v).pow(r.degree(v) - b.degree(v));
-                r = r.mul(&lead).sub(&b.mul(&top).mul(&shift));
-            }
-            a = b;
-            let c = content(&r);
-            b = if r.is_zero() { r } else { r.div_exact(&c).unwrap_or_default() };
         }
-        positive(a.mul(&common))
+        Ok(())
     }
-    /// The same with a number for one variable, and the denominator that was multiplied away:
-    /// `p(value) = result.0 / result.1`.
-    pub fn substitute(&self, var: Var, value: &RBig) -> (Self, IBig) {
-        let d = self.degree(var);
-        let (n, q) = (value.numerator().clone(), IBig::from(value.denominator().clone()));
-        let mut out = Self::zero();
-        for (k, c) in self.coefficients(var).iter().enumerate() {
-            out = out.add(&c.scale(&(n.pow(k) * q.pow(d as usize - k))));
-        }
-        (out, q.pow(d as usize))
-    }
+}
+
+/// An exponent in 32 bits, the greatest where it is beyond.
+fn narrow(exponent: u64) -> u32 {
+    u32::try_from(exponent).unwrap_or(u32::MAX)
 }

@@ -1,0 +1,177 @@
+//! Greatest common divisors, certified by exact division.
+//!
+//! Steps: numbers and monomials common to all terms are taken out; variables that only one of the two has, and
+//! variables whose one-variable images modulo a prime show that the divisor lacks them, are got rid of by going over
+//! to coefficients; where the images allow it, each is tried as a divisor of the other; what then remains is a divisor
+//! that has all the variables. Primes and points are fixed, so the same input takes the same way.
+
+mod dense;
+mod images;
+mod remainders;
+#[cfg(test)]
+mod tests;
+
+use super::Poly;
+use super::Var;
+use super::poly::coefficients::gcd_word;
+use super::poly::layout::{combined, words};
+use dashu_base::Gcd;
+use dashu_int::IBig;
+
+/// Greatest common divisor with its number, the leading coefficient positive; gcd(0, p) = ±p.
+pub(crate) fn gcd(a: &Poly, b: &Poly) -> Poly {
+    let positive = |p: &Poly| if p.is_negative() { p.neg() } else { p.clone() };
+    if a.is_zero() || a == b {
+        return positive(b);
+    }
+    if b.is_zero() {
+        return positive(a);
+    }
+    let (ca, cb) = (a.content(), b.content());
+    let number = if ca == IBig::ONE || cb == IBig::ONE { IBig::ONE } else { IBig::from((&ca).gcd(&cb)) };
+    if a.is_constant() || b.is_constant() {
+        return Poly::constant(number);
+    }
+    let (ma, mb) = (common_monomial(a), common_monomial(b));
+    let common = Poly::monomial(&least(&ma, &mb), number);
+    if a.len() == 1 || b.len() == 1 {
+        return common;
+    }
+    let strip = |p: &Poly, m: &Poly, c: &IBig| {
+        let p = if m.is_one() { p.clone() } else { p.div_exact(m).unwrap_or_default() };
+        let p = if *c == IBig::ONE { p } else { p.div_number(c).unwrap_or_default() };
+        positive(&p)
+    };
+    common.mul(&primitive(&strip(a, &ma, &ca), &strip(b, &mb, &cb)))
+}
+
+/// The least exponents in all terms, as a monomial.
+pub(crate) fn common_monomial(p: &Poly) -> Poly {
+    let w = words(p.fields());
+    let mut powers = Vec::new();
+    for f in p.fields() {
+        // The constant term, where there is one, stands last: mostly one look is enough.
+        let last = f.get(p.key(p.len() - 1));
+        let low = if last == 0 { 0 } else { p.keys().chunks_exact(w).map(|k| f.get(k)).min().unwrap_or(0) };
+        powers.push((f.var, low));
+    }
+    Poly::monomial(&powers, IBig::ONE)
+}
+
+fn least(a: &Poly, b: &Poly) -> Vec<(Var, u64)> {
+    combined(a.fields(), b.fields(), u64::min).iter().map(|f| (f.var, f.degree)).collect()
+}
+
+/// The divisor of two that have no common number or monomial of their own, with positive leading coefficients.
+fn primitive(a: &Poly, b: &Poly) -> Poly {
+    if a == b {
+        return a.clone();
+    }
+    let shared = combined(a.fields(), b.fields(), u64::min);
+    if shared.is_empty() {
+        return Poly::one();
+    }
+    if shared.len() < a.fields().len() || shared.len() < b.fields().len() {
+        let keep: Vec<Var> = shared.iter().map(|f| f.var).collect();
+        let mut parts = pieces(a, &keep);
+        parts.extend(pieces(b, &keep));
+        return of_many(parts);
+    }
+    let (mut x, mut y) = (a.clone(), b.clone());
+    let deflated = deflate(&mut x, &mut y);
+    let g = with_all_variables(&x, &y);
+    deflated.into_iter().fold(g, |g, (var, k)| g.with_exponents(var, |e| e * k))
+}
+
+/// The divisor of two that have the same variables.
+fn with_all_variables(a: &Poly, b: &Poly) -> Poly {
+    if let [f] = a.fields() {
+        return of_one_variable(a, b, f.var);
+    }
+    let bounds = images::degree_bounds(a, b);
+    let keep: Vec<Var> = bounds.iter().filter(|b| b.1 > 0).map(|b| b.0).collect();
+    if keep.is_empty() {
+        return Poly::one();
+    }
+    if keep.len() < a.fields().len() {
+        let mut parts = pieces(a, &keep);
+        parts.extend(pieces(b, &keep));
+        return of_many(parts);
+    }
+    for (p, q) in [(a, b), (b, a)] {
+        if bounds.iter().all(|&(v, d)| d == q.degree_of(v)) && p.div_exact(q).is_some() {
+            return q.clone();
+        }
+    }
+    remainders::gcd(a, b, &bounds)
+}
+
+/// Coefficients as a polynomial in all variables but these.
+fn pieces(p: &Poly, keep: &[Var]) -> Vec<Poly> {
+    let mut parts = vec![p.clone()];
+    for v in p.variables() {
+        if !keep.contains(&v) {
+            parts = parts.iter().flat_map(|q| q.powers(v)).map(|(_, c)| c).collect();
+        }
+    }
+    parts
+}
+
+/// The primitive divisor of many, the shortest first.
+fn of_many(parts: Vec<Poly>) -> Poly {
+    of_coefficients(parts).primitive()
+}
+
+/// The divisor of many with its number.
+fn of_coefficients(mut parts: Vec<Poly>) -> Poly {
+    parts.sort_by_key(|p| (p.variables().len(), p.len()));
+    let mut out = Poly::zero();
+    for p in parts {
+        out = gcd(&out, &p);
+        if out.is_one() {
+            break;
+        }
+    }
+    out
+}
+
+/// Degrees beyond this, after common factors of the exponents are taken out, aren't searched for common factors: only
+/// dead times of no simple ratio give such, and a list of all powers would take their place in memory.
+const LARGEST_DEGREE: u64 = 1 << 20;
+
+fn of_one_variable(a: &Poly, b: &Poly, var: Var) -> Poly {
+    match (dense_list(a, var), dense_list(b, var)) {
+        (Some(x), Some(y)) => Poly::from_dense(var, &dense::gcd(&x, &y)),
+        _ => Poly::one(),
+    }
+}
+
+fn dense_list(p: &Poly, var: Var) -> Option<Vec<IBig>> {
+    if p.degree_of(var) > LARGEST_DEGREE { None } else { p.to_dense(var) }
+}
+
+/// Puts x for x^k wherever all exponents of x in both are multiples of k, and gives the list of (x, k).
+fn deflate(a: &mut Poly, b: &mut Poly) -> Vec<(Var, u64)> {
+    let mut done = Vec::new();
+    for var in a.variables() {
+        let k = exponents_gcd(b, var, exponents_gcd(a, var, 0));
+        if k > 1 {
+            *a = a.with_exponents(var, |e| e / k);
+            *b = b.with_exponents(var, |e| e / k);
+            done.push((var, k));
+        }
+    }
+    done
+}
+
+fn exponents_gcd(p: &Poly, var: Var, start: u64) -> u64 {
+    let Some(f) = p.field(var).filter(|f| f.degree > 1) else { return if p.degree_of(var) == 1 { 1 } else { start } };
+    let mut g = start;
+    for key in p.keys().chunks_exact(words(p.fields())) {
+        g = gcd_word(g, f.get(key));
+        if g == 1 {
+            break;
+        }
+    }
+    g
+}

@@ -1,0 +1,140 @@
+//! Images in one variable modulo a prime, all variables in one pass, and what they tell of degrees.
+
+use crate::algebra::poly::coefficients::Coefficients;
+use crate::algebra::poly::layout::{Field, words};
+use crate::algebra::prime::Prime;
+use crate::algebra::{Poly, Var};
+
+/// Fields side by side in one word whose values index one table.
+struct Chunk {
+    word: usize,
+    shift: u32,
+    mask: u64,
+    /// The fields in it, with their points.
+    fields: Vec<(Field, u64)>,
+    /// For each value the product of the points' powers.
+    products: Vec<u64>,
+    /// For each value the sum of the terms that have it.
+    sums: Vec<u64>,
+}
+
+/// Tables of at most 2^9 values stay in the nearest cache.
+const CHUNK_BITS: u8 = 9;
+
+/// No list of all powers for a degree beyond this.
+const LONGEST_IMAGE: u64 = 1 << 16;
+
+fn chunks(p: &Poly, prime: &Prime, point: &impl Fn(Var) -> u64) -> Vec<Chunk> {
+    let mut groups: Vec<Vec<Field>> = Vec::new();
+    for &f in p.fields() {
+        match groups.last_mut() {
+            Some(g) if g[0].word == f.word && g[0].shift + g[0].bits - f.shift <= CHUNK_BITS => g.push(f),
+            _ => groups.push(vec![f]),
+        }
+    }
+    groups
+        .into_iter()
+        .map(|g| {
+            let low = g.last().map_or(0, |f| f.shift);
+            let bits = g[0].shift + g[0].bits - low;
+            let fields: Vec<(Field, u64)> = g.iter().map(|f| (*f, point(f.var))).collect();
+            let size = if bits <= CHUNK_BITS { 1usize << bits } else { g[0].degree.min(LONGEST_IMAGE) as usize + 1 };
+            let mut products = vec![prime.one; size];
+            for (f, x) in &fields {
+                let (step, count) = (1usize << (f.shift - low), 1usize << f.bits.min(CHUNK_BITS));
+                if fields.len() == 1 && bits > CHUNK_BITS {
+                    (1..size).for_each(|e| products[e] = prime.mul(products[e - 1], *x));
+                    continue;
+                }
+                let mut powers = vec![prime.one; count];
+                (1..count).for_each(|e| powers[e] = prime.mul(powers[e - 1], *x));
+                for (value, product) in products.iter_mut().enumerate() {
+                    *product = prime.mul(*product, powers[value / step % count]);
+                }
+            }
+            let mask = u64::MAX >> (64 - bits);
+            Chunk { word: g[0].word as usize, shift: u32::from(low), mask, fields, products, sums: vec![0; size] }
+        })
+        .collect()
+}
+
+/// For each variable of `p`, its image with `point` for all other variables, from the power 0 up; `None` where the
+/// degree is too large for a list.
+pub(super) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec<(Var, Option<Vec<u64>>)> {
+    let mut chunks = chunks(p, prime, &point);
+    let power = |c: &Chunk, value: u64| match c.products.get(value as usize) {
+        Some(x) => *x,
+        None => prime.pow(c.fields[0].1, value),
+    };
+    let w = words(p.fields());
+    let mut visit = |key: &[u64], c: u64| {
+        let mut t = c;
+        for chunk in &chunks {
+            t = prime.mul(t, power(chunk, (key[chunk.word] >> chunk.shift) & chunk.mask));
+        }
+        for chunk in &mut chunks {
+            if let Some(sum) = chunk.sums.get_mut(((key[chunk.word] >> chunk.shift) & chunk.mask) as usize) {
+                *sum = prime.add(*sum, t);
+            }
+        }
+    };
+    match p.values() {
+        Coefficients::Small(c) => {
+            p.keys().chunks_exact(w).zip(c).for_each(|(key, &c)| visit(key, prime.of_signed(c)));
+        }
+        Coefficients::Big(c) => p.keys().chunks_exact(w).zip(c).for_each(|(key, c)| visit(key, prime.of_big(c))),
+    }
+    let mut out = Vec::new();
+    for chunk in &chunks {
+        for (f, x) in &chunk.fields {
+            if f.degree > LONGEST_IMAGE {
+                out.push((f.var, None));
+                continue;
+            }
+            let mut image = vec![0; f.degree as usize + 1];
+            for (value, sum) in chunk.sums.iter().enumerate() {
+                if *sum > 0 {
+                    let e = (value as u64) >> (u32::from(f.shift) - chunk.shift) & f.mask();
+                    image[e as usize] = prime.add(image[e as usize], *sum);
+                }
+            }
+            let back = prime.inverse(*x);
+            let mut scale = prime.one;
+            for c in &mut image {
+                *c = prime.mul(*c, scale);
+                scale = prime.mul(scale, back);
+            }
+            out.push((f.var, Some(image)));
+        }
+    }
+    out
+}
+
+/// Degree of the greatest common divisor modulo a prime; the lists are residues from the power 0 up.
+pub(super) fn gcd_degree(prime: &Prime, a: &[u64], b: &[u64]) -> usize {
+    super::dense::gcd_modulo(prime, a, b).len().saturating_sub(1)
+}
+
+/// For each variable an upper bound of the degree of gcd(a, b) in it; both have the same variables.
+///
+/// An image at a point where the leading coefficient of `a` or of `b` doesn't vanish keeps the divisor's degree, so the
+/// image's own divisor has at least that one.
+pub(super) fn degree_bounds(a: &Poly, b: &Poly) -> Vec<(Var, u64)> {
+    let prime = Prime::first();
+    let point = |v: Var| prime.scattered(u64::from(v.0));
+    let (x, y) = (images(a, &prime, point), images(b, &prime, point));
+    a.fields()
+        .iter()
+        .map(|f| {
+            let least = f.degree.min(b.degree_of(f.var));
+            let find = |list: &[(Var, Option<Vec<u64>>)]| list.iter().find(|i| i.0 == f.var).and_then(|i| i.1.clone());
+            let bound = match (find(&x), find(&y)) {
+                (Some(p), Some(q)) if p.last() != Some(&0) || q.last() != Some(&0) => {
+                    least.min(gcd_degree(&prime, &p, &q) as u64)
+                }
+                _ => least,
+            };
+            (f.var, bound)
+        })
+        .collect()
+}
