@@ -3,7 +3,7 @@
 use super::coefficients::{Coefficient, Coefficients};
 use super::layout::{Field, words};
 use super::{Poly, Var};
-use dashu_base::{Sign, UnsignedAbs};
+use dashu_base::Sign;
 use dashu_int::{IBig, UBig, Word};
 
 /// Dense boxes of more places than this aren't made: 2^22 places of 16 bytes stay near the size of a cache.
@@ -227,9 +227,4 @@ impl Poly {
         };
         Self { fields, keys, coefficients: Coefficients::from_big(coefficients) }
     }
-}
-
-/// Greatest magnitude of a list, for bounds.
-pub(crate) fn largest(values: &[IBig]) -> UBig {
-    values.iter().map(|c| c.clone().unsigned_abs()).max().unwrap_or_default()
 }
