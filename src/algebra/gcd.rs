@@ -5,9 +5,9 @@
 //! to coefficients; where the images allow it, each is tried as a divisor of the other; what then remains is a divisor
 //! that has all the variables. Primes and points are fixed, so the same input takes the same way.
 
-mod dense;
-mod images;
-mod remainders;
+pub(crate) mod dense;
+pub(crate) mod images;
+pub(crate) mod remainders;
 #[cfg(test)]
 mod tests;
 

@@ -111,6 +111,11 @@ impl Prime {
     pub(crate) fn all() -> impl Iterator<Item = Self> {
         (0..1u64 << 40).map(|k| (1 << 62) - 1 - 2 * k).filter(|&n| Self::is_prime(n)).map(Self::new)
     }
+    /// The primes from 101 to 65521, rising.
+    pub(crate) fn small() -> impl Iterator<Item = Self> {
+        let is_prime = |n: &u64| (2..).take_while(|d| d * d <= *n).all(|d| !n.is_multiple_of(d));
+        (101u64..1 << 16).step_by(2).filter(is_prime).map(Self::new)
+    }
     /// The first of [`Self::all`].
     pub(crate) fn first() -> Self {
         Self::new((1 << 62) - 57)

@@ -3,48 +3,9 @@
 use crate::algebra::poly::coefficients::Coefficient;
 use crate::algebra::poly::dense::divide;
 use crate::algebra::prime::Prime;
+use crate::algebra::residues;
 use dashu_base::{Gcd, Sign, UnsignedAbs};
 use dashu_int::{IBig, UBig};
-
-fn trim(v: &mut Vec<u64>) {
-    while v.last() == Some(&0) {
-        v.pop();
-    }
-}
-
-/// The monic greatest common divisor modulo a prime, from the power 0 up; empty where both are 0.
-pub(crate) fn gcd_modulo(prime: &Prime, a: &[u64], b: &[u64]) -> Vec<u64> {
-    let (mut a, mut b) = (a.to_vec(), b.to_vec());
-    trim(&mut a);
-    trim(&mut b);
-    if a.len() < b.len() {
-        std::mem::swap(&mut a, &mut b);
-    }
-    while !b.is_empty() {
-        if b.len() == 1 {
-            return vec![prime.one];
-        }
-        let inverse = prime.inverse(b[b.len() - 1]);
-        b.iter_mut().for_each(|c| *c = prime.mul(*c, inverse));
-        while a.len() >= b.len() {
-            let top = a[a.len() - 1];
-            let from = a.len() - b.len();
-            if top != 0 {
-                for (x, y) in a[from..].iter_mut().zip(&b) {
-                    *x = prime.sub(*x, prime.mul(top, *y));
-                }
-            }
-            a.pop();
-        }
-        trim(&mut a);
-        std::mem::swap(&mut a, &mut b);
-    }
-    if let Some(&top) = a.last() {
-        let inverse = prime.inverse(top);
-        a.iter_mut().for_each(|c| *c = prime.mul(*c, inverse));
-    }
-    a
-}
 
 /// Divided by the content, the leading coefficient positive.
 pub(crate) fn primitive(mut values: Vec<IBig>) -> Vec<IBig> {
@@ -76,12 +37,12 @@ pub(crate) fn gcd(a: &[IBig], b: &[IBig]) -> Vec<IBig> {
     let mut modulus = UBig::ONE;
     let mut tried: Vec<IBig> = Vec::new();
     for prime in Prime::all() {
-        let residues = |p: &[IBig]| p.iter().map(|c| prime.of_big(c)).collect::<Vec<_>>();
-        let (x, y) = (residues(a), residues(b));
+        let modulo = |p: &[IBig]| p.iter().map(|c| prime.of_big(c)).collect::<Vec<_>>();
+        let (x, y) = (modulo(a), modulo(b));
         if x.last() == Some(&0) || y.last() == Some(&0) {
             continue;
         }
-        let mut g = gcd_modulo(&prime, &x, &y);
+        let mut g = residues::gcd(&prime, &x, &y);
         if g.len() == 1 {
             return vec![IBig::ONE];
         }

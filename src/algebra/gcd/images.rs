@@ -3,6 +3,7 @@
 use crate::algebra::poly::coefficients::Coefficients;
 use crate::algebra::poly::layout::{Field, words};
 use crate::algebra::prime::Prime;
+use crate::algebra::residues;
 use crate::algebra::{Poly, Var};
 
 /// Fields side by side in one word whose values index one table.
@@ -60,7 +61,7 @@ fn chunks(p: &Poly, prime: &Prime, point: &impl Fn(Var) -> u64) -> Vec<Chunk> {
 
 /// For each variable of `p`, its image with `point` for all other variables, from the power 0 up; `None` where the
 /// degree is too large for a list.
-pub(super) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec<(Var, Option<Vec<u64>>)> {
+pub(crate) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec<(Var, Option<Vec<u64>>)> {
     let mut chunks = chunks(p, prime, &point);
     let power = |c: &Chunk, value: u64| match c.products.get(value as usize) {
         Some(x) => *x,
@@ -110,11 +111,6 @@ pub(super) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec
     out
 }
 
-/// Degree of the greatest common divisor modulo a prime; the lists are residues from the power 0 up.
-pub(super) fn gcd_degree(prime: &Prime, a: &[u64], b: &[u64]) -> usize {
-    super::dense::gcd_modulo(prime, a, b).len().saturating_sub(1)
-}
-
 /// For each variable an upper bound of the degree of gcd(a, b) in it; both have the same variables.
 ///
 /// An image at a point where the leading coefficient of `a` or of `b` doesn't vanish keeps the divisor's degree, so the
@@ -130,7 +126,7 @@ pub(super) fn degree_bounds(a: &Poly, b: &Poly) -> Vec<(Var, u64)> {
             let find = |list: &[(Var, Option<Vec<u64>>)]| list.iter().find(|i| i.0 == f.var).and_then(|i| i.1.clone());
             let bound = match (find(&x), find(&y)) {
                 (Some(p), Some(q)) if p.last() != Some(&0) || q.last() != Some(&0) => {
-                    least.min(gcd_degree(&prime, &p, &q) as u64)
+                    least.min(residues::gcd(&prime, &p, &q).len().saturating_sub(1) as u64)
                 }
                 _ => least,
             };

@@ -26,7 +26,7 @@ pub(super) fn gcd(a: &Poly, b: &Poly, bounds: &[(Var, u64)]) -> Poly {
 }
 
 /// Greatest common divisor of the coefficients in one variable.
-pub(super) fn content(p: &Poly, v: Var) -> Poly {
+pub(crate) fn content(p: &Poly, v: Var) -> Poly {
     super::of_coefficients(p.powers(v).into_iter().map(|(_, c)| c).collect())
 }
 
