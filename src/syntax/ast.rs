@@ -184,6 +184,8 @@ pub enum StatementKind {
         output: Name,
         /// The signed sum.
         value: ExprId,
+        /// Its description, quotation marks excluded.
+        description: Option<Span>,
     },
     /// `block …`
     Block(Box<Block>),

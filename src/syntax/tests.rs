@@ -1,0 +1,1 @@
+//! Tests of the whole room: texts in, trees and diagnostics out.
