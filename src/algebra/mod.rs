@@ -1,5 +1,6 @@
 //! Exact arithmetic: polynomials, rational functions, determinants, roots. Knows nothing of netlists.
 
+pub mod dense;
 pub mod factor;
 mod fraction;
 pub mod functions;
@@ -7,7 +8,9 @@ mod gcd;
 mod poly;
 mod prime;
 mod residues;
+pub mod roots;
 pub mod solve;
+pub mod stability;
 
 pub use dashu_int::{IBig, UBig};
 pub use dashu_ratio::RBig;
