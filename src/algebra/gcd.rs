@@ -17,6 +17,7 @@ use super::poly::coefficients::gcd_word;
 use super::poly::layout::{combined, words};
 use dashu_base::Gcd;
 use dashu_int::IBig;
+use std::borrow::Cow;
 
 /// Greatest common divisor with its number, the leading coefficient positive; gcd(0, p) = ±p.
 pub(crate) fn gcd(a: &Poly, b: &Poly) -> Poly {
@@ -37,12 +38,19 @@ pub(crate) fn gcd(a: &Poly, b: &Poly) -> Poly {
     if a.len() == 1 || b.len() == 1 {
         return common;
     }
-    let strip = |p: &Poly, m: &Poly, c: &IBig| {
-        let p = if m.is_one() { p.clone() } else { p.div_exact(m).unwrap_or_default() };
-        let p = if *c == IBig::ONE { p } else { p.div_number(c).unwrap_or_default() };
-        positive(&p)
-    };
-    common.mul(&primitive(&strip(a, &ma, &ca), &strip(b, &mb, &cb)))
+    common.mul(&primitive(&stripped(a, &ma, &ca), &stripped(b, &mb, &cb)))
+}
+
+/// Without its common monomial and its content, the leading coefficient positive; borrowed where it is so already.
+fn stripped<'p>(p: &'p Poly, monomial: &Poly, content: &IBig) -> Cow<'p, Poly> {
+    let mut out = Cow::Borrowed(p);
+    if !monomial.is_one() {
+        out = Cow::Owned(out.div_exact(monomial).unwrap_or_default());
+    }
+    if *content != IBig::ONE {
+        out = Cow::Owned(out.div_number(content).unwrap_or_default());
+    }
+    if out.is_negative() { Cow::Owned(out.neg()) } else { out }
 }
 
 /// The least exponents in all terms, as a monomial.
@@ -71,29 +79,17 @@ fn primitive(a: &Poly, b: &Poly) -> Poly {
     if shared.is_empty() {
         return Poly::one();
     }
-    if shared.len() < a.fields().len() || shared.len() < b.fields().len() {
-        let keep: Vec<Var> = shared.iter().map(|f| f.var).collect();
-        let mut parts = pieces(a, &keep);
-        parts.extend(pieces(b, &keep));
-        return of_many(parts);
-    }
-    let (mut x, mut y) = (a.clone(), b.clone());
-    let deflated = deflate(&mut x, &mut y);
-    let g = with_all_variables(&x, &y);
-    deflated.into_iter().fold(g, |g, (var, k)| g.with_exponents(var, |e| e * k))
-}
-
-/// The divisor of two that have the same variables.
-fn with_all_variables(a: &Poly, b: &Poly) -> Poly {
-    if let [f] = a.fields() {
-        return of_one_variable(a, b, f.var);
+    if let ([f], [_], [_]) = (&shared[..], a.fields(), b.fields()) {
+        let (mut x, mut y) = (a.clone(), b.clone());
+        let k = deflate(&mut x, &mut y, f.var);
+        return of_one_variable(&x, &y, f.var).with_exponents(f.var, |e| e * k);
     }
     let bounds = images::degree_bounds(a, b);
     let keep: Vec<Var> = bounds.iter().filter(|b| b.1 > 0).map(|b| b.0).collect();
     if keep.is_empty() {
         return Poly::one();
     }
-    if keep.len() < a.fields().len() {
+    if keep.len() < a.fields().len() || keep.len() < b.fields().len() {
         let mut parts = pieces(a, &keep);
         parts.extend(pieces(b, &keep));
         return of_many(parts);
@@ -103,7 +99,11 @@ fn with_all_variables(a: &Poly, b: &Poly) -> Poly {
             return q.clone();
         }
     }
-    remainders::gcd(a, b, &bounds)
+    let (mut x, mut y) = (a.clone(), b.clone());
+    let powers: Vec<(Var, u64)> = keep.iter().map(|&v| (v, deflate(&mut x, &mut y, v))).collect();
+    let bounds: Vec<(Var, u64)> = bounds.iter().zip(&powers).map(|(b, p)| (b.0, b.1 / p.1)).collect();
+    let g = remainders::gcd(&x, &y, &bounds);
+    powers.into_iter().fold(g, |g, (var, k)| if k == 1 { g } else { g.with_exponents(var, |e| e * k) })
 }
 
 /// Coefficients as a polynomial in all variables but these.
@@ -150,18 +150,14 @@ fn dense_list(p: &Poly, var: Var) -> Option<Vec<IBig>> {
     if p.degree_of(var) > LARGEST_DEGREE { None } else { p.to_dense(var) }
 }
 
-/// Puts x for x^k wherever all exponents of x in both are multiples of k, and gives the list of (x, k).
-fn deflate(a: &mut Poly, b: &mut Poly) -> Vec<(Var, u64)> {
-    let mut done = Vec::new();
-    for var in a.variables() {
-        let k = exponents_gcd(b, var, exponents_gcd(a, var, 0));
-        if k > 1 {
-            *a = a.with_exponents(var, |e| e / k);
-            *b = b.with_exponents(var, |e| e / k);
-            done.push((var, k));
-        }
+/// Puts x for x^k where all exponents of x in both are multiples of k, and gives k.
+fn deflate(a: &mut Poly, b: &mut Poly, var: Var) -> u64 {
+    let k = exponents_gcd(b, var, exponents_gcd(a, var, 0));
+    if k > 1 {
+        *a = a.with_exponents(var, |e| e / k);
+        *b = b.with_exponents(var, |e| e / k);
     }
-    done
+    k
 }
 
 fn exponents_gcd(p: &Poly, var: Var, start: u64) -> u64 {

@@ -156,6 +156,13 @@ impl Poly {
     pub fn bits(&self) -> usize {
         self.coefficients.bits()
     }
+    /// The sum of its coefficients' magnitudes where that fits a word.
+    pub(crate) fn magnitude(&self) -> Option<u64> {
+        match &self.coefficients {
+            Coefficients::Small(c) => c.iter().try_fold(0u64, |s, c| s.checked_add(c.unsigned_abs())),
+            Coefficients::Big(_) => None,
+        }
+    }
     /// The packed exponents of term `i`.
     pub(crate) fn key(&self, i: usize) -> &[u64] {
         let w = words(&self.fields);
@@ -256,6 +263,9 @@ impl Poly {
         }
         if self.is_zero() || divisor.is_one() {
             return Some(self.clone());
+        }
+        if self == divisor {
+            return Some(Self::one());
         }
         division::quotient(self, divisor)
     }

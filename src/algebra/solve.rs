@@ -1,6 +1,19 @@
 //! Exact solutions of systems of linear equations whose coefficients are polynomials.
+//!
+//! Three steps: unknowns with a pivot ±1 in a sparse row or column are eliminated as they stand; then, where symbols
+//! occur, minors over sets of columns give determinant and numerators without any division ([`minors`]); systems in one
+//! variable, and symbolic ones in which few terms meet in long coefficients, go by fraction-free elimination
+//! ([`bareiss`]).
+
+mod bareiss;
+mod condense;
+mod minors;
+mod terms;
+#[cfg(test)]
+mod tests;
 
 use super::Poly;
+pub use minors::{MAX_COLUMNS, MAX_SETS, MAX_TERMS};
 
 /// A square system A x = b, by its rows; each row lists (column, coefficient), columns rising, no zeros.
 #[derive(Clone, Debug, Default)]
@@ -28,6 +41,25 @@ pub struct Solution {
     pub determinant: Poly,
 }
 
+/// Solutions for several right sides, which share the determinant: `x[wanted[i]] = numerators[k][i] / determinant` for
+/// the right side k.
+#[derive(Clone, Debug)]
+pub struct Solutions {
+    /// For each right side, one for each wanted unknown.
+    pub numerators: Vec<Vec<Poly>>,
+    /// As in [`Solution`].
+    pub determinant: Poly,
+}
+
+/// A system while it is worked on: columns from `unknowns` on are right sides.
+#[derive(Clone, Debug)]
+struct Augmented {
+    rows: Vec<Vec<(usize, Poly)>>,
+    unknowns: usize,
+    rights: usize,
+    wanted: Vec<usize>,
+}
+
 impl System {
     /// Solves A x = b for some unknowns; `right` lists (row, value) of b.
     ///
@@ -35,48 +67,78 @@ impl System {
     ///
     /// [`SolveError::Singular`] where det A = 0; [`SolveError::Limit`] where a named limit would be passed.
     pub fn solve(&self, right: &[(usize, Poly)], wanted: &[usize]) -> Result<Solution, SolveError> {
-        let determinant = self.determinant_of(None);
-        if determinant.is_zero() {
-            return Err(SolveError::Singular);
-        }
-        let numerators = wanted.iter().map(|&w| self.determinant_of(Some((w, right)))).collect();
-        Ok(Solution { numerators, determinant })
+        let mut all = self.solve_many(&[right], wanted)?;
+        Ok(Solution { numerators: all.numerators.pop().unwrap_or_default(), determinant: all.determinant })
     }
 
-    /// det A, with one column replaced by `right` where asked for; fraction-free elimination (Bareiss 1968).
-    fn determinant_of(&self, replaced: Option<(usize, &[(usize, Poly)])>) -> Poly {
+    /// Solves A x = b for several right sides b and some unknowns.
+    ///
+    /// # Errors
+    ///
+    /// As [`Self::solve`].
+    pub fn solve_many(&self, rights: &[&[(usize, Poly)]], wanted: &[usize]) -> Result<Solutions, SolveError> {
         let n = self.rows.len();
-        let mut a = vec![vec![Poly::zero(); n]; n];
-        for (i, row) in self.rows.iter().enumerate() {
-            for (j, p) in row {
-                a[i][*j] = p.clone();
-            }
-        }
-        if let Some((w, right)) = replaced {
-            for row in &mut a {
-                row[w] = Poly::zero();
-            }
-            for (i, p) in right {
-                a[*i][w] = p.clone();
-            }
-        }
-        let (mut last, mut negative) = (Poly::one(), false);
-        for k in 0..n {
-            let Some(p) = (k..n).filter(|&i| !a[i][k].is_zero()).min_by_key(|&i| a[i][k].len()) else {
-                return Poly::zero();
-            };
-            if p != k {
-                a.swap(p, k);
-                negative = !negative;
-            }
-            for i in k + 1..n {
-                for j in k + 1..n {
-                    let t = a[k][k].mul(&a[i][j]).sub(&a[i][k].mul(&a[k][j]));
-                    a[i][j] = t.div_exact(&last).unwrap_or_default();
+        let mut rows = self.rows.clone();
+        for (k, right) in rights.iter().enumerate() {
+            let mut values: Vec<(usize, Poly)> = right.to_vec();
+            values.sort_by_key(|v| v.0);
+            for same in values.chunk_by(|a, b| a.0 == b.0) {
+                let sum = same[1..].iter().fold(same[0].1.clone(), |s, v| s.add(&v.1));
+                if !sum.is_zero() {
+                    rows[same[0].0].push((n + k, sum));
                 }
             }
-            last = a[k][k].clone();
         }
-        if negative { last.neg() } else { last }
+        let system = Augmented { rows, unknowns: n, rights: rights.len(), wanted: wanted.to_vec() };
+        check_degrees(&system)?;
+        let (system, negative) = condense::condense(system);
+        let mut all = expand(&system)?;
+        if all.determinant.is_zero() {
+            return Err(SolveError::Singular);
+        }
+        if negative {
+            all.determinant = all.determinant.neg();
+            all.numerators.iter_mut().flatten().for_each(|p| *p = p.neg());
+        }
+        Ok(all)
     }
+
+    /// det A; 0 for a singular system.
+    ///
+    /// # Errors
+    ///
+    /// [`SolveError::Limit`] where a named limit would be passed.
+    pub fn determinant(&self) -> Result<Poly, SolveError> {
+        match self.solve_many(&[], &[]) {
+            Ok(all) => Ok(all.determinant),
+            Err(SolveError::Singular) => Ok(Poly::zero()),
+            Err(limit) => Err(limit),
+        }
+    }
+}
+
+/// Degrees beyond 32 bits have no exponents that could be given back.
+fn check_degrees(system: &Augmented) -> Result<(), SolveError> {
+    let most = |row: &Vec<(usize, Poly)>| row.iter().flat_map(|e| e.1.fields()).map(|f| f.degree).max().unwrap_or(0);
+    let sum = system.rows.iter().fold(0u64, |s, r| s.saturating_add(most(r)));
+    if sum > u64::from(u32::MAX) {
+        return Err(SolveError::Limit(
+            "dead times have no common divisor that is large enough: their multiples pass 4294967295; \
+             round the dead times"
+                .to_owned(),
+        ));
+    }
+    Ok(())
+}
+
+/// Determinant and numerators by the way that suits.
+fn expand(system: &Augmented) -> Result<Solutions, SolveError> {
+    let mut variables: Vec<_> = system.rows.iter().flatten().flat_map(|e| e.1.variables()).collect();
+    variables.sort_unstable();
+    variables.dedup();
+    if variables.len() > 1 {
+        let plan = minors::plan(system)?;
+        return minors::run(system, &plan);
+    }
+    bareiss::solve(system)
 }

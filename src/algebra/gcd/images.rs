@@ -111,7 +111,7 @@ pub(crate) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec
     out
 }
 
-/// For each variable an upper bound of the degree of gcd(a, b) in it; both have the same variables.
+/// For each variable that both have an upper bound of the degree of gcd(a, b) in it.
 ///
 /// An image at a point where the leading coefficient of `a` or of `b` doesn't vanish keeps the divisor's degree, so the
 /// image's own divisor has at least that one.
@@ -121,6 +121,7 @@ pub(super) fn degree_bounds(a: &Poly, b: &Poly) -> Vec<(Var, u64)> {
     let (x, y) = (images(a, &prime, point), images(b, &prime, point));
     a.fields()
         .iter()
+        .filter(|f| b.field(f.var).is_some())
         .map(|f| {
             let least = f.degree.min(b.degree_of(f.var));
             let find = |list: &[(Var, Option<Vec<u64>>)]| list.iter().find(|i| i.0 == f.var).and_then(|i| i.1.clone());

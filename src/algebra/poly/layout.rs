@@ -149,7 +149,7 @@ pub(crate) fn repack(keys: &[u64], count: usize, from: &[Field], to: &[Field]) -
     out
 }
 
-/// The greatest exponent in every field. Fields of one bit are taken together.
+/// The greatest exponent in every field, of monomials sorted descending. Fields of one bit are taken together.
 pub(crate) fn degrees(keys: &[u64], fields: &[Field]) -> Vec<u64> {
     let w = words(fields);
     let mut any = vec![0; w];
@@ -158,14 +158,14 @@ pub(crate) fn degrees(keys: &[u64], fields: &[Field]) -> Vec<u64> {
             *a |= k;
         }
     }
-    fields
-        .iter()
-        .map(|f| {
-            let all = f.get(&any);
-            if all & (all + u64::from(f.bits < 64)) == 0 && f.bits == 1 || all == 0 {
-                return all;
-            }
-            keys.chunks_exact(w).map(|key| f.get(key)).max().unwrap_or(0)
-        })
-        .collect()
+    let greatest = |f: &Field| {
+        let all = f.get(&any);
+        match (f.word, f.shift + f.bits, f.bits) {
+            (0, 64, _) => f.get(keys),
+            (_, _, 1) => all,
+            _ if all == 0 => 0,
+            _ => keys.chunks_exact(w).map(|key| f.get(key)).max().unwrap_or(0),
+        }
+    };
+    fields.iter().map(greatest).collect()
 }
