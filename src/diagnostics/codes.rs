@@ -32,6 +32,16 @@ macro_rules! codes {
             pub const fn severity(self) -> Severity {
                 match self { $(Self::$variant => Severity::$severity,)* }
             }
+
+            /// Its page: what it means, why it matters, a bad example and the mended one. Markdown.
+            pub const fn page(self) -> &'static str {
+                match self { $(Self::$variant => include_str!(concat!("../../docs/diagnostics/", $word, ".md")),)* }
+            }
+
+            /// The code that this word stands for.
+            pub fn from_word(word: &str) -> Option<Self> {
+                Self::ALL.iter().copied().find(|c| c.word() == word)
+            }
         }
     };
 }

@@ -4,8 +4,10 @@
 //! one. Only this room knows the library that draws them (`render`).
 
 mod codes;
+mod render;
 
 pub use codes::{Code, Severity};
+pub use render::{Style, clean, render, summary, wrap};
 
 use crate::source::Span;
 

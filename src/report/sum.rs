@@ -1,0 +1,409 @@
+//! Polynomials as words: sums of products that can be broken into lines.
+//!
+//! Nothing here holds a whole polynomial as text: a symbolic result may have millions of terms, and its words go to
+//! the page as they are made.
+
+use super::number::{self, superscript};
+use crate::algebra::{IBig, Poly, RBig, UBig, Var};
+use crate::netlist::values::{DELAYS, PARAMS};
+use dashu_base::UnsignedAbs as _;
+use std::collections::BTreeMap;
+
+/// The longest word, in characters, before a product may be broken at one of its dots.
+const LONGEST_WORD: usize = 40;
+
+/// What stands between a word and the one before it.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Joint {
+    /// A blank: the next term of a sum.
+    Space,
+    /// Nothing: the same product goes on.
+    Tight,
+}
+
+/// Takes words, each with its joint; answers whether to go on.
+pub(super) type Sink<'a> = dyn FnMut(Joint, &str) -> bool + 'a;
+
+/// Words being made.
+pub(super) struct Words<'a> {
+    current: String,
+    joint: Joint,
+    sink: &'a mut Sink<'a>,
+    stopped: bool,
+}
+
+impl<'a> Words<'a> {
+    /// Words for `sink`.
+    pub(super) fn new(sink: &'a mut Sink<'a>) -> Self {
+        Self { current: String::new(), joint: Joint::Tight, sink, stopped: false }
+    }
+
+    /// More of the current word.
+    pub(super) fn push(&mut self, text: &str) {
+        self.current.push_str(text);
+    }
+
+    /// The end of a word: after it a line may be broken.
+    pub(super) fn end(&mut self, next: Joint) {
+        if !self.current.is_empty() && !self.stopped {
+            self.stopped = !(self.sink)(self.joint, &self.current);
+        }
+        self.current.clear();
+        self.joint = next;
+    }
+
+    /// A centre dot; the product may be broken after it where it is long.
+    pub(super) fn dot(&mut self) {
+        self.push("·");
+        if self.current.chars().count() > LONGEST_WORD {
+            self.end(Joint::Tight);
+        }
+    }
+
+    /// Whether something stands to the left that the next factor is multiplied with.
+    fn in_product(&self) -> bool {
+        !matches!(self.current.as_str(), "" | "-" | "+ " | "- ")
+    }
+
+    /// Whether nobody wants more words.
+    pub(super) const fn stopped(&self) -> bool {
+        self.stopped
+    }
+}
+
+/// What the coefficients of a polynomial are multiplied with before they are told, and how they are told.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub(super) enum Scale {
+    /// As they are, whole numbers.
+    Whole,
+    /// Multiplied with this, exactly.
+    Exact(RBig),
+    /// Multiplied with this and rounded.
+    Rounded(RBig),
+}
+
+impl Scale {
+    /// A coefficient's absolute value as it is told; none for 1.
+    fn tell(&self, coefficient: &IBig) -> Option<String> {
+        let size = coefficient.clone().unsigned_abs();
+        match self {
+            Self::Whole if size.is_one() => None,
+            Self::Whole => Some(number::exact(&RBig::from(size))),
+            Self::Exact(by) | Self::Rounded(by) => {
+                let value = RBig::from(size) * by;
+                if value.is_one() {
+                    return None;
+                }
+                if matches!(self, Self::Rounded(_)) {
+                    return Some(number::rounded(&value));
+                }
+                let text = number::exact(&value);
+                Some(if text.contains('/') { format!("({text})") } else { text })
+            }
+        }
+    }
+}
+
+/// How variables are called.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Naming<'a> {
+    /// `s` or `z`.
+    pub(super) variable: &'a str,
+    /// Params, π and basic dead times.
+    pub(super) names: &'a [(Var, String)],
+    /// Whether coefficients carry powers of the second, in brackets: those of a factor in time constants.
+    pub(super) seconds: bool,
+}
+
+type Monomial = Vec<(Var, u32)>;
+
+/// Whether a variable stands for a dead time.
+pub(super) fn is_delay(var: Var) -> bool {
+    (DELAYS..PARAMS).contains(&var.0)
+}
+
+impl Naming<'_> {
+    fn name(&self, var: Var) -> &str {
+        if var == Var::S {
+            return self.variable;
+        }
+        let found = self.names.binary_search_by_key(&var, |n| n.0).ok();
+        found.and_then(|i| self.names.get(i)).map_or("?", |n| &n.1)
+    }
+
+    /// A power of a variable; a dead time's is the dead time as often.
+    fn power(&self, var: Var, exponent: u32) -> String {
+        let name = self.name(var);
+        if is_delay(var) {
+            return delay_power(name, exponent);
+        }
+        if exponent == 1 { name.to_owned() } else { format!("{name}{}", superscript(exponent)) }
+    }
+
+    /// The whole polynomial as a sum, collected by powers of the variable, and by dead times before that.
+    pub(super) fn sum(&self, out: &mut Words<'_>, p: &Poly, scale: &Scale) {
+        if p.is_zero() {
+            out.push("0");
+            return;
+        }
+        if !p.variables().into_iter().any(is_delay) {
+            return self.collected(out, p.terms(), scale, true);
+        }
+        let mut groups: BTreeMap<Monomial, Vec<(Monomial, IBig)>> = BTreeMap::new();
+        for (monomial, c) in p.terms() {
+            let (delays, rest): (Monomial, Monomial) = monomial.into_iter().partition(|&(v, _)| is_delay(v));
+            groups.entry(delays).or_default().push((rest, c));
+        }
+        let mut first = true;
+        for (delays, terms) in groups {
+            if delays.is_empty() {
+                self.collected(out, terms, scale, true);
+            } else {
+                let negative = terms.first().is_some_and(|t| is_negative(&t.1));
+                sign(out, negative, first);
+                self.group(out, terms, scale, negative);
+                for (v, e) in delays {
+                    if out.in_product() {
+                        out.dot();
+                    }
+                    out.push(&self.power(v, e));
+                }
+            }
+            first = false;
+        }
+    }
+
+    /// A dead time's factor: its terms in parentheses, or its only term; nothing for 1.
+    fn group(&self, out: &mut Words<'_>, terms: Vec<(Monomial, IBig)>, scale: &Scale, flipped: bool) {
+        if let [(monomial, c)] = terms.as_slice() {
+            self.product(out, monomial, c, scale, false);
+            return;
+        }
+        out.push("(");
+        let flip = |c: IBig| if flipped { -c } else { c };
+        self.collected(out, terms.into_iter().map(|(m, c)| (m, flip(c))), scale, true);
+        out.push(")");
+    }
+
+    /// Terms in descending powers of the variable: those of one power are put in parentheses where there are several.
+    fn collected(
+        &self,
+        out: &mut Words<'_>,
+        terms: impl IntoIterator<Item = (Monomial, IBig)>,
+        scale: &Scale,
+        mut first: bool,
+    ) {
+        let mut terms = terms.into_iter().peekable();
+        while let Some((monomial, c)) = terms.next() {
+            if out.stopped() {
+                return;
+            }
+            let power = main_power(&monomial);
+            let negative = is_negative(&c);
+            let alone = power == 0 || terms.peek().is_none_or(|t| main_power(&t.0) != power);
+            sign(out, negative, first);
+            first = false;
+            if alone {
+                self.product(out, &monomial, &c, scale, true);
+                continue;
+            }
+            out.push("(");
+            self.product(out, without_main(&monomial), &c, scale, true);
+            while let Some((m, c)) = terms.next_if(|t| main_power(&t.0) == power) {
+                if out.stopped() {
+                    return;
+                }
+                sign(out, is_negative(&c) != negative, false);
+                self.product(out, without_main(&m), &c, scale, true);
+            }
+            out.push(")");
+            out.dot();
+            out.push(&self.power(Var::S, power));
+        }
+    }
+
+    /// One term without its sign; 1 is told only where asked for.
+    fn product(&self, out: &mut Words<'_>, monomial: &[(Var, u32)], c: &IBig, scale: &Scale, one: bool) {
+        let mut any = false;
+        let power = main_power(monomial);
+        if let Some(text) = scale.tell(c) {
+            out.push(&text);
+            any = true;
+        }
+        if self.seconds && power > 0 && any {
+            out.push(&if power == 1 { " [s]".to_owned() } else { format!(" [s{}]", superscript(power)) });
+        }
+        for &(v, e) in without_main(monomial) {
+            if any {
+                out.dot();
+            }
+            out.push(&self.power(v, e));
+            any = true;
+        }
+        if power > 0 {
+            if any {
+                out.dot();
+            }
+            out.push(&self.power(Var::S, power));
+            any = true;
+        }
+        if !any && one {
+            out.push("1");
+        }
+    }
+}
+
+/// The sign before a term, and the end of the word before it.
+fn sign(out: &mut Words<'_>, negative: bool, first: bool) {
+    if first {
+        if negative {
+            out.push("-");
+        }
+    } else {
+        out.end(Joint::Space);
+        out.push(if negative { "- " } else { "+ " });
+    }
+}
+
+fn is_negative(c: &IBig) -> bool {
+    *c < IBig::ZERO
+}
+
+/// The power of s or z: it stands first in every monomial.
+fn main_power(monomial: &[(Var, u32)]) -> u32 {
+    monomial.first().filter(|p| p.0 == Var::S).map_or(0, |p| p.1)
+}
+
+fn without_main(monomial: &[(Var, u32)]) -> &[(Var, u32)] {
+    if main_power(monomial) > 0 { &monomial[1..] } else { monomial }
+}
+
+/// A dead time as often as its exponent says: `exp(-0.2·s)` for the second power of `exp(-(1/10)*s)`.
+fn delay_power(name: &str, exponent: u32) -> String {
+    let inner = name.strip_prefix("exp(-").and_then(|n| n.strip_suffix("*s)"));
+    let Some(time) = inner else {
+        return if exponent == 1 { name.to_owned() } else { format!("({name}){}", superscript(exponent)) };
+    };
+    let bare = time.strip_prefix('(').and_then(|t| t.strip_suffix(')')).unwrap_or(time);
+    let (n, d) = bare.split_once('/').unwrap_or((bare, "1"));
+    let number = n.parse::<IBig>().ok().zip(d.parse::<UBig>().ok()).filter(|(_, d)| !d.is_zero());
+    let told = match number {
+        Some((n, d)) => {
+            let text = number::exact(&(RBig::from_parts(n, d) * RBig::from(exponent)));
+            if text.contains('/') { format!("({text})") } else { text }
+        }
+        None if exponent == 1 => dotted(time),
+        None => format!("{exponent}·{}", dotted(time)),
+    };
+    if told == "1" { "exp(-s)".to_owned() } else { format!("exp(-{told}·s)") }
+}
+
+/// An expression of the results' own notation with centre dots and raised exponents: `2*Kp^2` is `2·Kp²`.
+pub(super) fn dotted(expression: &str) -> String {
+    let mut out = String::with_capacity(expression.len());
+    let mut rest = expression;
+    while let Some(at) = rest.find(['*', '^']) {
+        out.push_str(&rest[..at]);
+        let power = rest[at..].starts_with('^');
+        rest = &rest[at + 1..];
+        let digits = rest.bytes().take_while(u8::is_ascii_digit).count();
+        match rest[..digits].parse() {
+            Ok(exponent) if power => {
+                out.push_str(&superscript(exponent));
+                rest = &rest[digits..];
+            }
+            _ => out.push(if power { '^' } else { '·' }),
+        }
+    }
+    out + rest
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    const K: Var = Var(PARAMS);
+    const T: Var = Var(PARAMS + 1);
+    const DELAY: Var = Var(DELAYS);
+
+    fn term(c: i64, powers: &[(Var, u32)]) -> (Monomial, IBig) {
+        (powers.to_vec(), IBig::from(c))
+    }
+
+    fn told(terms: Vec<(Monomial, IBig)>, scale: &Scale) -> String {
+        let names = [(DELAY, "exp(-(1/10)*s)".to_owned()), (K, "K".to_owned()), (T, "T".to_owned())];
+        let naming = Naming { variable: "s", names: &names, seconds: false };
+        let mut text = String::new();
+        let mut sink = |joint: Joint, word: &str| {
+            if joint == Joint::Space {
+                text.push(' ');
+            }
+            text.push_str(word);
+            true
+        };
+        let mut words = Words::new(&mut sink);
+        naming.sum(&mut words, &Poly::from_terms(terms), scale);
+        words.end(Joint::Tight);
+        text
+    }
+
+    #[test]
+    fn numbers_come_first_and_powers_stand_high() {
+        let p = vec![term(25, &[(Var::S, 2)]), term(-1, &[(Var::S, 1)]), term(0, &[]), term(600, &[])];
+        assert_eq!(told(p.clone(), &Scale::Whole), "25·s² - s + 600");
+        let by = RBig::from_parts(IBig::ONE, UBig::from(25u8));
+        assert_eq!(told(p, &Scale::Exact(by)), "s² - 0.04·s + 24");
+        assert_eq!(told(vec![], &Scale::Whole), "0");
+        assert_eq!(told(vec![term(-1, &[])], &Scale::Whole), "-1");
+        let third = RBig::from_parts(IBig::ONE, UBig::from(3u8));
+        assert_eq!(told(vec![term(1, &[(Var::S, 1)])], &Scale::Exact(third.clone())), "(1/3)·s");
+        assert_eq!(told(vec![term(1, &[(Var::S, 1)])], &Scale::Rounded(third)), "0.333333·s");
+    }
+
+    #[test]
+    fn symbols_are_collected_by_powers_of_s() {
+        let p = vec![
+            term(1, &[(Var::S, 2), (K, 2), (T, 1)]),
+            term(-3, &[(Var::S, 1), (K, 1)]),
+            term(2, &[(Var::S, 1)]),
+            term(1, &[(K, 1)]),
+            term(-1, &[(T, 1)]),
+        ];
+        assert_eq!(told(p, &Scale::Whole), "K²·T·s² - (3·K - 2)·s + K - T");
+    }
+
+    #[test]
+    fn dead_times_stand_apart() {
+        let p = vec![
+            term(1, &[(Var::S, 2)]),
+            term(2, &[]),
+            term(-3, &[(Var::S, 1), (DELAY, 1)]),
+            term(-1, &[(DELAY, 1)]),
+            term(1, &[(DELAY, 3)]),
+            term(5, &[(Var::S, 1), (DELAY, 2)]),
+        ];
+        assert_eq!(told(p, &Scale::Whole), "s² + 2 - (3·s + 1)·exp(-0.1·s) + 5·s·exp(-0.2·s) + exp(-0.3·s)");
+        assert_eq!(delay_power("exp(-2*T*s)", 2), "exp(-2·2·T·s)");
+        assert_eq!(delay_power("exp(-T*s)", 1), "exp(-T·s)");
+        assert_eq!(delay_power("exp(-1*s)", 1), "exp(-s)");
+    }
+
+    #[test]
+    fn the_notation_of_results_is_set_with_dots() {
+        assert_eq!(dotted("2*Kp^2 - b^12*a"), "2·Kp² - b¹²·a");
+    }
+
+    #[test]
+    fn words_stop_when_nobody_listens() {
+        let p = Poly::from_terms((0..50).map(|k| term(1, &[(Var::S, k)])));
+        let mut count = 0;
+        let mut sink = |_: Joint, _: &str| {
+            count += 1;
+            count < 3
+        };
+        let mut words = Words::new(&mut sink);
+        Naming { variable: "s", names: &[], seconds: false }.sum(&mut words, &p, &Scale::Whole);
+        words.end(Joint::Tight);
+        assert_eq!(count, 3);
+    }
+}
