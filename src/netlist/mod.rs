@@ -14,6 +14,7 @@
 //! All text-like things here are names; files, printing and numbers in floating point are not known.
 
 pub mod expr;
+pub mod probe;
 pub mod values;
 
 use crate::source::Span;

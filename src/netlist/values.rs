@@ -96,6 +96,11 @@ impl<'n> Values<'n> {
         &self.symbols
     }
 
+    /// The value of a param.
+    pub fn param(&self, id: ParamId) -> &Fraction {
+        &self.params[id.index()].fraction
+    }
+
     /// What a variable is called: `s`, `Kp`, `pi`, `exp(-0.1*s)`.
     pub fn name(&self, var: Var) -> String {
         if var == PI {

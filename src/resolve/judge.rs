@@ -6,7 +6,9 @@ use super::units::Dimension;
 use super::write_out::Writer;
 use crate::diagnostics::{Code, Diagnostic};
 use crate::netlist::expr::{Expr as Node, ExprId as NodeId};
-use crate::netlist::{Driver, InstanceId, Law, SignalId, TimeBase};
+use crate::netlist::probe::Probe;
+use crate::netlist::values::Values;
+use crate::netlist::{CaseId, Driver, InstanceId, Keep, Law, Netlist, SignalId, TimeBase};
 use crate::source::Span;
 
 /// How many rounds of finding units of undeclared signals there are: each carries a unit on through at least one sum
@@ -23,6 +25,35 @@ impl Writer<'_> {
             self.judge_laws();
         }
         self.find_time_base();
+        self.judge_values();
+    }
+
+    /// Works out all values, for nominal and for each case: divisions by zero, circles of a case, limits.
+    fn judge_values(&mut self) {
+        if self.told.iter().any(Diagnostic::is_error) {
+            return;
+        }
+        let net = &self.net;
+        let mut told = Vec::new();
+        let cases = std::iter::once(None).chain((0..net.cases.len()).map(|i| Some(CaseId(i as u32))));
+        for case in cases {
+            let name = case.map(|c| net.cases[c.index()].name.as_str());
+            let in_case = |d: Diagnostic| match name {
+                Some(name) => Diagnostic { message: format!("{} (in case `{name}`)", d.message), ..d },
+                None => d,
+            };
+            let values = match Values::new(net, case, &Keep::Nothing) {
+                Ok(values) => values,
+                Err(errors) => {
+                    told.extend(errors.into_iter().map(in_case));
+                    continue;
+                }
+            };
+            let probe = Probe::new(net, &values);
+            let failing = expressions(net).filter(|e| !probe.surely_has_value(*e));
+            told.extend(failing.filter_map(|e| values.evaluate(e).err()).map(|d| in_case(*d)));
+        }
+        self.told.extend(told);
     }
 
     fn judge_signals(&mut self) {
@@ -272,4 +303,17 @@ impl Writer<'_> {
         }
         false
     }
+}
+
+/// All expressions whose values laws and sums need.
+fn expressions(net: &Netlist) -> impl Iterator<Item = NodeId> + '_ {
+    let laws = net.blocks.iter().flat_map(|b| {
+        let law: Vec<NodeId> = match &b.law {
+            Law::Scalar(e) => vec![*e],
+            Law::Matrix(rows) => rows.iter().flatten().copied().collect(),
+            Law::States(lines) => lines.iter().flat_map(|l| l.terms.iter().map(|t| t.coefficient)).collect(),
+        };
+        law.into_iter().chain(b.every)
+    });
+    laws.chain(net.terms.iter().filter_map(|t| t.factor))
 }
