@@ -15,6 +15,8 @@ mod scope;
 mod states;
 mod suggest;
 mod unit_text;
+#[cfg(test)]
+mod tests;
 pub mod units;
 mod write_out;
 
