@@ -39,8 +39,8 @@ pub(super) struct LoadedFile {
     own_units: Vec<usize>,
     /// Whether something that it uses could not be read: then what is missing is not told again.
     pub incomplete: bool,
-    /// Statements that could not be read.
-    pub broken: Vec<Span>,
+    /// Names in statements that could not be read.
+    pub lost_names: Vec<Span>,
 }
 
 impl LoadedFile {
@@ -134,7 +134,7 @@ impl Loading<'_> {
     fn parse(&mut self, id: FileId) -> LoadedFile {
         let file = self.sources.file(id);
         let (text, base) = (file.text.clone(), file.base);
-        let Parsed { tree, diagnostics, broken } = syntax::parse(&text, base);
+        let Parsed { tree, diagnostics, lost_names } = syntax::parse(&text, base);
         self.loaded.diagnostics.extend(diagnostics);
         LoadedFile {
             text,
@@ -145,7 +145,7 @@ impl Loading<'_> {
             units: UnitTable::new(),
             own_units: Vec::new(),
             incomplete: false,
-            broken,
+            lost_names,
         }
     }
 

@@ -14,9 +14,9 @@ mod requests;
 mod scope;
 mod states;
 mod suggest;
-mod unit_text;
 #[cfg(test)]
 mod tests;
+mod unit_text;
 pub mod units;
 mod write_out;
 

@@ -155,11 +155,17 @@ fn every_mistake_has_its_code_and_line() {
         ("input r\noutput y\nsum y = r + 1", &["not-linear 3"]),
         ("input r\ninput q\noutput y\nsum y = r*q", &["not-linear 4"]),
         ("param a = 2*b\nparam b = a + 1\ninput r\noutput y\nblock G : r -> y = a", &["circular-definition 1"]),
-        ("define f(T) = g(T)\ndefine g(T) = f(T)\ninput r\noutput y\nblock G : r -> y = f(1)", &["circular-definition 1"]),
+        (
+            "define f(T) = g(T)\ndefine g(T) = f(T)\ninput r\noutput y\nblock G : r -> y = f(1)",
+            &["circular-definition 1"],
+        ),
         ("param a = 3\nparam b = 1/(a - 3)\ninput r\noutput y\nblock G : r -> y = b", &["division-by-zero 2"]),
         ("input r\noutput y\nblock G : r -> y = 1/(s - s)", &["division-by-zero 3"]),
         ("param a = 1\ncase c { a = 0 }\ninput r\noutput y\nblock G : r -> y = 1/a", &["division-by-zero 5"]),
-        ("input r\noutput y\nblock G : r -> y = 1/s\nfind y / q\nrequire stable in hot", &["unknown-name 4", "unknown-name 5"]),
+        (
+            "input r\noutput y\nblock G : r -> y = 1/s\nfind y / q\nrequire stable in hot",
+            &["unknown-name 4", "unknown-name 5"],
+        ),
         ("input r\noutput y\nblock G : r -> y = 1/s\nrequire phase_marign at y >= 3", &["unknown-name 4"]),
         ("input r\noutput y\nblock G : r -> y = lag(2, 3, 4, 5)", &["syntax 3"]),
         ("define f(a, b) = a/b\ninput r\noutput y\nblock G : r -> y = f(1)", &["syntax 4"]),
@@ -191,14 +197,20 @@ fn every_mistake_has_its_code_and_line() {
 #[test]
 fn units_that_do_not_agree_are_told_at_the_operator() {
     let cases: &[(&str, &[&str])] = &[
-        ("param J = 1 [kg*m^2]\nparam m = 2 [kg]\nparam x = J + m\ninput r\noutput y\nblock G : r -> y = x", &["unit-mismatch 3"]),
+        (
+            "param J = 1 [kg*m^2]\nparam m = 2 [kg]\nparam x = J + m\ninput r\noutput y\nblock G : r -> y = x",
+            &["unit-mismatch 3"],
+        ),
         ("param T = 3 [m]\ninput r\noutput y\nblock G : r -> y = 1/(T*s + 1)", &["unit-mismatch 4"]),
         ("param T = 3 [ms]\ninput r\noutput y\nblock G : r -> y = 1/(T*s + 1)/(s + 1)", &[]),
         ("input t [N*m]\nsignal w [rad/s]\noutput y\nblock I : t -> w = 1/s\nsum y = t - w", &["unit-mismatch 5"]),
         ("input t [N*m]\ninput w [rad/s]\noutput y [N*m]\nsum y = 2*w", &[]),
         ("param K = 2 [V]\ninput t [m]\noutput y [m]\nblock G : t -> y = K", &["unit-mismatch 4"]),
         ("param T = 3 [m]\ninput r\noutput y\nblock G : r -> y = exp(-T*s)", &["unit-mismatch 4"]),
-        ("param K = 2 [V/m]\ninput t [m]\nsignal u\noutput y [m]\nblock G : t -> u = K\nsum y = t - u", &["unit-mismatch 6"]),
+        (
+            "param K = 2 [V/m]\ninput t [m]\nsignal u\noutput y [m]\nblock G : t -> u = K\nsum y = t - u",
+            &["unit-mismatch 6"],
+        ),
     ];
     for (text, want) in cases {
         assert_eq!(told(text), *want, "\n{text}");
@@ -239,7 +251,8 @@ fn composites_are_written_out_with_their_ports_and_params() {
                 block C : e -> u = K\n  sum v = u - load\n  block P : v -> pos = 1/(J*s + 1)\n}\ninput r\ninput d\noutput y\n\
                 block az : r, d -> y = servo(K = 3)\ncase hot { az.K = 4 }\nfind y / r, az.e / az.ref, az.u / d\n";
     let net = netlist(text);
-    let names: Vec<&str> = (0..net.signals.len()).map(|i| net.signal_name(crate::netlist::SignalId(i as u32))).collect();
+    let names: Vec<&str> =
+        (0..net.signals.len()).map(|i| net.signal_name(crate::netlist::SignalId(i as u32))).collect();
     assert_eq!(names, ["r", "d", "y", "az.e", "az.u", "az.v"]);
     assert_eq!(law(&net, "az.P", None), "(1) / (1 s^1 + 1)");
     assert_eq!(law(&net, "az.C", Some(0)), "(4) / (1)");

@@ -110,11 +110,7 @@ impl<'a> Writer<'a> {
             nominal: None,
         };
         // What stands in a statement that could not be read is not told to be missing elsewhere.
-        let words = |text: &str| {
-            let is_name = |c: char| unicode_ident::is_xid_continue(c) || c == '_';
-            text.split(|c| !is_name(c)).filter(|w| !w.is_empty()).map(|w| normal(w).into_owned()).collect::<Vec<_>>()
-        };
-        let excused = root.broken.iter().flat_map(|s| words(root.text(*s))).collect();
+        let excused = root.lost_names.iter().map(|s| normal(root.text(*s)).into_owned()).collect();
         Self {
             loaded,
             net,
