@@ -58,8 +58,9 @@ pub(super) struct Bound {
     pub s: bool,
     /// Whether z is in it.
     pub z: bool,
-    /// Whether it is the number 1 as written.
-    pub one: bool,
+    /// Whether it is made of s and the number 1 alone: beside `+` and `-` it takes any power of the second, since a
+    /// coefficient 1 is not written.
+    pub pure: bool,
     /// The unit written after it, by its place in the netlist's list for display.
     pub unit: Option<u32>,
     /// Whether something in it was told to be in error: nothing that follows from it is told.
@@ -154,8 +155,8 @@ impl Writer<'_> {
                 }
             },
         };
-        let one = self.net.exprs.get(id) == Node::Ratio(1, 1);
-        Ok(Bound { one, measure: Measure { bare: Some(span), ..Measure::FREE }, ..plain(id) })
+        let pure = self.net.exprs.get(id) == Node::Ratio(1, 1);
+        Ok(Bound { pure, measure: Measure { bare: Some(span), ..Measure::FREE }, ..plain(id) })
     }
 
     pub(super) fn bind_name(&mut self, name: Name, ctx: Context) -> Bound {
@@ -164,7 +165,7 @@ impl Writer<'_> {
             ("pi", _) => return plain(self.net.exprs.push(Node::Pi, name.span)),
             ("s", Place::Law) => {
                 let id = self.net.exprs.push(Node::S, name.span);
-                return Bound { s: true, measure: Measure::of(Dimension::SECOND.pow(-1)), ..plain(id) };
+                return Bound { s: true, pure: true, measure: Measure::of(Dimension::SECOND.pow(-1)), ..plain(id) };
             }
             ("z", Place::Law) => {
                 let id = self.net.exprs.push(Node::Z, name.span);
@@ -183,7 +184,7 @@ impl Writer<'_> {
         if let Some(frame) = ctx.frame
             && let Some((_, bound)) = self.frames[frame].arguments.iter().find(|(n, _)| *n == sym)
         {
-            return Bound { one: false, ..*bound };
+            return Bound { pure: false, ..*bound };
         }
         if let Some(value) = self.indices.get(ctx.env, sym) {
             return plain(self.net.exprs.push_number(RBig::from(value), name.span));
@@ -254,15 +255,23 @@ impl Writer<'_> {
             }
         };
         let id = self.net.exprs.push(node, span);
-        Bound { id, measure, s: a.s || b.s, z: a.z || b.z, one: false, unit: None, broken: a.broken || b.broken }
+        Bound {
+            id,
+            measure,
+            s: a.s || b.s,
+            z: a.z || b.z,
+            pure: a.pure && b.pure,
+            unit: None,
+            broken: a.broken || b.broken,
+        }
     }
 
     /// The unit of a + b or a - b; two that don't agree are told at the operator.
     fn added(&mut self, op: BinaryOp, a: Bound, b: Bound, (ctx, between): (Context, Span)) -> Measure {
         let agree = match (a.measure.known, b.measure.known) {
-            (Some(x), Some(y)) => x == y,
-            (None, Some(y)) if a.one => y.is_power_of_second(),
-            (Some(x), None) if b.one => x.is_power_of_second(),
+            (Some(x), Some(y)) => x == y || ((a.pure || b.pure) && x.div(y).is_power_of_second()),
+            (None, Some(y)) if a.pure => y.is_power_of_second(),
+            (Some(x), None) if b.pure => x.is_power_of_second(),
             _ => true,
         };
         if !agree && !a.broken && !b.broken {
@@ -275,14 +284,14 @@ impl Writer<'_> {
                 .label(sign, "the two sides have different units")
                 .label(self.net.exprs.span(a.id), format!("this is {x}"))
                 .label(self.net.exprs.span(b.id), format!("this is {y}"));
-            let help = if a.one || b.one {
+            let help = if a.pure || b.pure {
                 "beside `+` or `-` the number 1 stands for a power of the second; check the unit of what stands on the other side (s counts as 1/s)"
             } else {
                 "check the units of the params on both sides (s counts as 1/s)"
             };
             self.tell(d.help(help), ctx);
         }
-        let known = a.measure.known.or(b.measure.known);
+        let known = if a.pure { b.measure.known.or(a.measure.known) } else { a.measure.known.or(b.measure.known) };
         let strict = if a.measure.known.is_some() { a.measure.strict } else { b.measure.strict };
         Measure { known, strict, bare: a.measure.bare.or(b.measure.bare) }
     }
@@ -312,7 +321,7 @@ impl Writer<'_> {
             return Ok(self.broken(d, ctx));
         };
         let id = self.net.exprs.push(Node::Pow(a.id, n), span);
-        Ok(Bound { id, measure: a.measure.map(|d| d.pow(n)), one: false, ..a })
+        Ok(Bound { id, measure: a.measure.map(|d| d.pow(n)), ..a })
     }
 
     fn bind_with_unit(&mut self, value: ExprId, place: u32, span: Span, ctx: Context) -> Result<Bound, LimitReached> {
@@ -334,7 +343,7 @@ impl Writer<'_> {
         }
         let id = self.scaled(a.id, &unit.scale, span);
         let shown = self.display_unit(ctx.file, place, &unit);
-        Ok(Bound { id, measure: Measure::of(unit.dimension), one: false, unit: Some(shown), ..a })
+        Ok(Bound { id, measure: Measure::of(unit.dimension), pure: false, unit: Some(shown), ..a })
     }
 
     /// A call of a defined law or a function.
@@ -545,7 +554,7 @@ impl Writer<'_> {
                 let measure = self.added(BinaryOp::Add, result, *value, (ctx, span));
                 let node = if name == "min" { Node::Min(result.id, value.id) } else { Node::Max(result.id, value.id) };
                 let id = self.net.exprs.push(node, span);
-                result = Bound { id, measure, one: false, broken, ..result };
+                result = Bound { id, measure, pure: false, broken, ..result };
             }
             return Ok(result);
         }
@@ -574,7 +583,7 @@ impl Writer<'_> {
             }
         };
         let id = self.net.exprs.push(Node::Call(f, first.id), span);
-        Ok(Bound { id, measure, one: false, broken, ..first })
+        Ok(Bound { id, measure, pure: false, broken, ..first })
     }
 
     /// `exp(-T*s)`: a dead time.
@@ -593,7 +602,7 @@ impl Writer<'_> {
             return self.broken(d.label(span, "the exponent T*s must be without a unit (s counts as 1/s)"), ctx);
         }
         let id = self.net.exprs.push(Node::Delay(argument.id), span);
-        Bound { id, measure: Measure::of(Dimension::ONE), one: false, ..argument }
+        Bound { id, measure: Measure::of(Dimension::ONE), pure: false, ..argument }
     }
 
     /// `sum(k in a..b, …)` and `product(…)`, written out.
@@ -768,7 +777,7 @@ pub(super) fn count(n: usize, what: &str) -> String {
 }
 
 fn plain(id: NodeId) -> Bound {
-    Bound { id, measure: Measure::FREE, s: false, z: false, one: false, unit: None, broken: false }
+    Bound { id, measure: Measure::FREE, s: false, z: false, pure: false, unit: None, broken: false }
 }
 
 fn gcd(mut a: u64, mut b: u64) -> u64 {

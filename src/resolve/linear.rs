@@ -233,7 +233,7 @@ impl Writer<'_> {
                 .unwrap_or_else(|| format!("add a line `{text} = …` or a param `{text}`"))
         };
         self.tell(d.label(span, "not known here").help(help), ctx);
-        Linear::Terms(Vec::new())
+        Linear::Constant(self.unknown_value(span))
     }
 
     fn joined(
@@ -340,7 +340,7 @@ impl Writer<'_> {
     fn number_one(&mut self, span: Span) -> Bound {
         let id = self.net.exprs.push(Node::Ratio(1, 1), span);
         let measure = Measure::of(super::units::Dimension::ONE);
-        Bound { id, measure, s: false, z: false, one: false, unit: None, broken: false }
+        Bound { id, measure, s: false, z: false, pure: false, unit: None, broken: false }
     }
 
     fn linear_repeated(

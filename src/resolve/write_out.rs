@@ -656,7 +656,7 @@ impl<'a> Writer<'a> {
                 if whole && self.shape(1, 1, block, span, ctx) {
                     let entry = self.entry(bound, id, span, ctx);
                     self.net.blocks[id.index()].law = Law::Scalar(entry);
-                    self.note_law(id, vec![(bound.measure, span)]);
+                    self.note_law(id, vec![(law_measure(bound), span)]);
                 } else {
                     self.unknown_law(id, span);
                 }
@@ -690,7 +690,7 @@ impl<'a> Writer<'a> {
             for entry in row {
                 let at = tree.expr(*entry).span;
                 let value = self.bind(*entry, ctx)?;
-                notes.push((value.measure, at));
+                notes.push((law_measure(value), at));
                 entries.push(self.entry(value, id, at, ctx));
             }
             bound.push(entries.into_boxed_slice());
@@ -899,4 +899,9 @@ enum Target {
     Sum(SumId),
     Block(BlockId),
     Instance(ScopeId, DefineId),
+}
+
+/// The unit of a law's entry; one of s and 1 alone has a coefficient 1 that takes the unit its place needs.
+fn law_measure(entry: Bound) -> Measure {
+    if entry.pure { Measure::FREE } else { entry.measure }
 }
