@@ -594,7 +594,7 @@ impl Writer<'_> {
         }
         if let Some(known) = argument.measure.known
             && !known.is_one()
-            && !argument.broken
+            && !(argument.pure || argument.broken)
         {
             let found = known.div(Dimension::SECOND.pow(-1));
             let message = format!("a dead time must be in [s], this one is in [{}]", found.spell());
