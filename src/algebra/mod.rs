@@ -1,12 +1,13 @@
 //! Exact arithmetic: polynomials, rational functions, determinants, roots. Knows nothing of netlists.
 
+pub mod decimal;
 pub mod dense;
 pub mod factor;
 mod fraction;
 pub mod functions;
 mod gcd;
 mod poly;
-mod prime;
+pub(crate) mod prime;
 mod residues;
 pub mod roots;
 pub mod solve;

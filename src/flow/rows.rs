@@ -4,14 +4,15 @@
 //! - a row of a matrix law is multiplied by the least common multiple of the denominators of its entries;
 //! - a line of state equations keeps its s: s · state = Σ …, so that its modes stay, whatever cancels.
 
+use super::direct::{self, Leads};
 use super::graph::Wiring;
 use crate::algebra::{Fraction, Poly, Var};
 use crate::diagnostics::Diagnostic;
 use crate::netlist::expr::ExprId;
 use crate::netlist::values::{Value, Values};
-use crate::netlist::{BlockId, Driver, Law, SignalId};
+use crate::netlist::{BlockId, CaseId, Driver, Keep, Law, SignalId};
 use rustc_hash::FxHashMap;
-use std::cell::RefCell;
+use std::cell::{OnceCell, RefCell};
 use std::rc::Rc;
 
 /// Values with a memory, so that each law is worked out once.
@@ -20,6 +21,9 @@ pub(crate) struct Laws<'n> {
     /// The values.
     pub(crate) values: Values<'n>,
     known: RefCell<FxHashMap<ExprId, Rc<Value>>>,
+    case: Option<CaseId>,
+    keep: Keep,
+    candidates: OnceCell<Vec<Vec<SignalId>>>,
 }
 
 /// One row: `left · v = Σ coefficient · u`, with every signal u once, in the order of their numbers.
@@ -34,9 +38,15 @@ pub(crate) struct Row {
 }
 
 impl<'n> Laws<'n> {
-    /// A memory that is still empty.
-    pub(crate) fn new(values: Values<'n>) -> Self {
-        Self { values, known: RefCell::default() }
+    /// A memory that is still empty, of the values for a case with some params kept.
+    pub(crate) fn new(values: Values<'n>, case: Option<CaseId>, keep: &Keep) -> Self {
+        Self { values, known: RefCell::default(), case, keep: keep.clone(), candidates: OnceCell::new() }
+    }
+
+    /// Sets of signals among which all algebraic loops lie, no signal cut.
+    pub(crate) fn candidates(&self, wiring: &Wiring<'n>) -> &[Vec<SignalId>] {
+        self.candidates
+            .get_or_init(|| direct::candidates(wiring, &mut Leads::new(wiring.netlist, self.case, &self.keep)))
     }
 
     /// The value of an expression.

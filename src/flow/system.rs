@@ -200,8 +200,10 @@ pub(crate) fn characteristic(
         }
     }
     for block in order {
-        let sees = |u: &SignalId| Some(*u) == from || question.is_none() || (part.place(*u).is_some() && !open.contains(u));
-        let mut inputs: Vec<SignalId> = wiring.netlist.blocks[block.index()].inputs.iter().copied().filter(sees).collect();
+        let sees =
+            |u: &SignalId| Some(*u) == from || question.is_none() || (part.place(*u).is_some() && !open.contains(u));
+        let mut inputs: Vec<SignalId> =
+            wiring.netlist.blocks[block.index()].inputs.iter().copied().filter(sees).collect();
         inputs.sort_unstable();
         inputs.dedup();
         let entries = laws.entries(wiring, block, &inputs, &outputs[&block])?;

@@ -1,7 +1,7 @@
 //! Polynomials and fractions as the exact strings of results: `Kp*b + 3`, `10/(s + 2)`, `25/2`.
 
-use crate::algebra::{Fraction, IBig, Poly, RBig, Var};
-use crate::netlist::values::Values;
+use crate::algebra::{Fraction, IBig, Poly, RBig, Var, decimal};
+use crate::netlist::values::{PARAMS, Values};
 use dashu_base::{Abs, Sign, Signed};
 
 /// Names of variables, looked up without an allocation: long symbolic results name some variable a hundred million
@@ -103,8 +103,9 @@ pub(crate) fn monic(names: &Names, p: &Poly) -> String {
     let Some(lead) = coefficients.last() else { return "0".to_owned() };
     let mut out = String::new();
     if let Some(lead) = lead.as_constant() {
-        for (powers, c) in p.terms() {
+        for (mut powers, c) in p.terms() {
             let c = RBig::from_parts_signed(c, lead.clone());
+            symbols_first(&mut powers);
             push_term(&mut out, names, c.is_negative(), &ratio(&c.clone().abs()), &powers);
         }
         return out;
@@ -122,16 +123,53 @@ pub(crate) fn monic(names: &Names, p: &Poly) -> String {
     out
 }
 
+/// A fraction with coefficients in decimals, the denominator's leading one 1: of what was rounded on the way.
+pub(crate) fn fraction_decimal(names: &Names, f: &Fraction) -> String {
+    let lead = f.denominator().leading_coefficient();
+    let side = |p: &Poly| {
+        let mut out = String::new();
+        for (powers, c) in p.terms() {
+            let c = RBig::from_parts_signed(c, lead.clone());
+            let negative = c.is_negative();
+            push_term(&mut out, names, negative, &decimal::text(&c.abs()), &powers);
+        }
+        if out.is_empty() { "0".to_owned() } else { out }
+    };
+    let (above, below) = (side(f.numerator()), side(f.denominator()));
+    let wrapped = |text: String| if text.contains(' ') { format!("({text})") } else { text };
+    if below == "1" { above } else { format!("{}/{}", wrapped(above), wrapped(below)) }
+}
+
+/// As [`monic`], with coefficients in decimals: of what was rounded on the way.
+pub(crate) fn monic_decimal(names: &Names, p: &Poly) -> String {
+    let lead = p.leading_coefficient();
+    if lead == IBig::ZERO {
+        return "0".to_owned();
+    }
+    let mut out = String::new();
+    for (powers, c) in p.terms() {
+        let c = RBig::from_parts_signed(c, lead.clone());
+        let negative = c.is_negative();
+        push_term(&mut out, names, negative, &decimal::text(&c.abs()), &powers);
+    }
+    out
+}
+
+/// `K*s` rather than `s*K`: params come before s and dead times.
+fn symbols_first(powers: &mut [(Var, u32)]) {
+    powers.sort_by_key(|(var, _)| (var.0 < PARAMS, *var));
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
 
     fn letters() -> Names {
-        Names { table: ["s", "K", "T"].iter().enumerate().map(|(i, n)| (Var(i as u32), (*n).to_owned())).collect() }
+        Names { table: [(0, "s"), (PARAMS, "K"), (PARAMS + 1, "T")].map(|(i, n)| (Var(i), n.to_owned())).to_vec() }
     }
 
     fn v(i: u32) -> Poly {
-        Poly::var(Var(i))
+        Poly::var(if i == 0 { Var::S } else { Var(PARAMS + i - 1) })
     }
 
     fn c(i: i64) -> Poly {

@@ -1,12 +1,15 @@
 //! From a fraction in lowest terms to the result that is printed.
 
-use super::figures::{self, Figures, Kind};
 use super::text::{self, Names};
-use crate::algebra::{Fraction, Poly, RBig, Var, functions};
+use crate::algebra::roots::RootOf;
+use crate::algebra::{Fraction, IBig, Poly, RBig, Var, decimal, functions};
 use crate::netlist::TimeBase;
 use crate::netlist::values::{DELAYS, PARAMS, PI, Values};
-use crate::results::{ExactTerm, Form, Transfer, TransferKind};
+use crate::results::{Decimal, ExactTerm, Form, Root, Transfer, TransferKind};
 use dashu_base::Sign;
+
+/// Above this degree poles and zeros are found only on request: they cost more than the transfer function itself.
+pub const MAX_ROOTS_DEGREE: u32 = 128;
 
 /// Whether a variable stands for a dead time.
 pub(crate) fn is_delay(var: Var) -> bool {
@@ -51,9 +54,9 @@ fn sorted_terms(values: &Values<'_>, p: &Poly) -> Vec<(Vec<(Var, u32)>, u32, Pol
             by_delay.entry(delays).or_default().push((rest, c));
         }
         for (delays, terms) in by_delay {
-            let total = delays.iter().try_fold(RBig::ZERO, |t, &(v, e)| {
-                delay_in_seconds(values, v).map(|d| t + d * RBig::from(e))
-            });
+            let total = delays
+                .iter()
+                .try_fold(RBig::ZERO, |t, &(v, e)| delay_in_seconds(values, v).map(|d| t + d * RBig::from(e)));
             groups.push(((total, delays), Poly::from_terms(terms)));
         }
         groups.sort_by(|(a, _), (b, _)| match (&a.0, &b.0) {
@@ -127,14 +130,8 @@ pub(crate) fn result(
     all_roots: bool,
 ) -> Transfer {
     let (numerator, denominator) = with_sign(values, fraction);
-    let mut numbers = Figures::default();
-    if has_figures(values, [&numerator, &denominator]) {
-        let delay = |var| delay_in_seconds(values, var);
-        let kind = Kind { sampled, all_roots, delay: &delay, rounded };
-        numbers = figures::figures(&numerator, &denominator, &kind);
-    }
     let names = Names::of(values, [&numerator, &denominator]);
-    Transfer {
+    let result = Transfer {
         kind: head.kind,
         to: head.to,
         from: head.from,
@@ -147,17 +144,67 @@ pub(crate) fn result(
         exact: !rounded,
         numerator: (!rounded).then(|| exact_terms(values, &numerator)),
         denominator: (!rounded).then(|| exact_terms(values, &denominator)),
-        decimal: numbers.decimal,
+        decimal: None,
         cancelled,
-        poles: numbers.poles,
-        zeros: numbers.zeros,
-        dc_gain: numbers.dc_gain,
-        converges_right_of: (!sampled).then_some(numbers.edge),
-        converges_outside: sampled.then_some(numbers.edge),
-        stable: numbers.stable,
+        poles: None,
+        zeros: None,
+        dc_gain: None,
+        converges_right_of: (!sampled).then_some(None),
+        converges_outside: sampled.then_some(None),
+        stable: None,
         verified: None,
-        form: Some(Form { numerator, denominator, names: names.table() }),
+        form: None,
+    };
+    let mut result = with_figures(values, result, [&numerator, &denominator], all_roots);
+    result.form = Some(Form { numerator, denominator, names: names.table() });
+    result
+}
+
+/// The same with its figures, where nothing but s, π and dead times without symbols occurs.
+fn with_figures(values: &Values<'_>, mut result: Transfer, polys: [&Poly; 2], all_roots: bool) -> Transfer {
+    if !has_figures(values, polys) {
+        return result;
     }
+    let sampled = result.variable == "z";
+    // π gives way to a rational number of 200 binary digits. What holds exactly for all values of π (a double pole, a
+    // pole on the axis) holds for that number too, and figures are told to 53 digits.
+    let [(above, scale_above), (below, scale_below)] = polys.map(|p| p.substitute(PI, &functions::pi()));
+    let at_rest = if sampled {
+        decimal::at_one(&above, &below)
+    } else {
+        decimal::at_zero(&above, &below, &|var| delay_in_seconds(values, var).unwrap_or(RBig::ZERO))
+    };
+    let scale = RBig::from_parts_signed(scale_below.clone(), scale_above.clone());
+    result.dc_gain = at_rest.map(|value| decimal::to_f64(&(value * scale)));
+    let [above_delayed, below_delayed] = [&above, &below].map(|p| p.variables().iter().any(|&v| v != Var::S));
+    if !above_delayed && !below_delayed {
+        let (n, d) = (numbers(&above, &scale_above), numbers(&below, &scale_below));
+        let (numerator, denominator) = decimal::coefficients(&n, &d, !result.exact);
+        result.decimal = Some(Decimal { numerator, denominator });
+    }
+    if !all_roots && above.degree(Var::S).max(below.degree(Var::S)) > MAX_ROOTS_DEGREE {
+        return result;
+    }
+    let told =
+        |roots: &[RootOf]| roots.iter().map(|r| Root { re: r.re, im: r.im, multiplicity: r.multiplicity }).collect();
+    if !above_delayed {
+        result.zeros = decimal::roots_of(&above).as_deref().map(told);
+    }
+    if !below_delayed {
+        let poles = decimal::roots_of(&below);
+        let edge = poles.as_ref().and_then(|p| decimal::edge(p, sampled));
+        result.converges_right_of = (!sampled).then_some(edge);
+        result.converges_outside = sampled.then_some(edge);
+        result.poles = poles.as_deref().map(told);
+        result.stable = decimal::is_stable(&below, sampled);
+    }
+    result
+}
+
+/// The coefficients of a polynomial in the main variable alone over a number, from the highest power down.
+fn numbers(p: &Poly, scale: &IBig) -> Vec<RBig> {
+    let dense = p.to_dense(Var::S).unwrap_or_default();
+    dense.into_iter().rev().map(|c| RBig::from_parts_signed(c, scale.clone())).collect()
 }
 
 /// Whether laws are in z.
