@@ -4,8 +4,8 @@ use super::factors::{self, FractionStyle};
 use super::number;
 use super::page::{INDENT, Page, one_line};
 use super::roots::{self, Plane};
-use super::sum::{Joint, Naming, Scale, Words, dotted, is_delay};
-use crate::algebra::{Fraction, IBig, Poly, RBig, Var};
+use super::sum::{Joint, Naming, Scale, Words, dotted};
+use crate::algebra::{Fraction, Poly, RBig, Var};
 use crate::results::{Characteristic, Decimal, Derive, Form, Transfer, TransferKind};
 use std::io::{self, Write};
 
@@ -69,7 +69,7 @@ pub fn derive(document: &Derive, options: TextOptions, out: &mut dyn Write) -> i
         page.gap()?;
         page.sentence(
             0,
-            "Roots and figures are rounded to 6 digits here; fractions are exact unless they say otherwise.",
+            "Roots and figures are rounded here (--format json has all digits); fractions are exact unless they say otherwise.",
         )?;
     }
     Ok(())
@@ -81,7 +81,7 @@ fn request(t: &Transfer, with_case: bool) -> String {
         TransferKind::Transfer => format!("{} / {}", t.to, t.from),
         TransferKind::Loop if t.at.len() > 1 => format!("loop at {}: {} / {}", t.at.join(", "), t.to, t.from),
         TransferKind::Loop => t.from.clone(),
-        TransferKind::Zeros => format!("zeros {} / {}", t.to, t.from),
+        TransferKind::Zeros => format!("zeros {} / {}", t.to.replace(',', ", "), t.from.replace(',', ", ")),
     };
     if !t.open.is_empty() {
         text += &format!(" with {} open", t.open.join(", "));
@@ -98,8 +98,8 @@ fn transfer(page: &mut Page<'_>, t: &Transfer, with_case: bool, style: FractionS
     let mut notes: Vec<String> = Vec::new();
     match (&t.form, &t.decimal) {
         (Some(form), _) if t.exact => {
-            let written = factors::write(&form.numerator, &form.denominator, style, t.variable == "z");
             let naming = naming(form, t.variable);
+            let written = factors::write(&form.numerator, &form.denominator, style, naming);
             let above = |out: &mut Words<'_>| written.numerator.words(out, naming);
             let below = |out: &mut Words<'_>| {
                 if let Some(side) = &written.denominator {
@@ -185,10 +185,13 @@ fn facts(t: &Transfer) -> (Vec<Fact>, bool) {
         facts.push(("poles, zeros".to_owned(), vec!["depend on the symbols".to_owned()]));
     }
     if let Some(period) = &t.sampling_period {
-        facts.push(("sampled every".to_owned(), vec![format!("{} s", plain(period))]));
+        facts.push(("sampled every".to_owned(), vec![format!("{} s", dotted(period))]));
     }
     let plane = Plane::of(t);
     for (name, list) in [("poles", &t.poles), ("zeros", &t.zeros)] {
+        if t.kind == TransferKind::Zeros && name == "poles" {
+            continue;
+        }
         match list {
             Some(list) if list.is_empty() => facts.push((name.to_owned(), vec!["none".to_owned()])),
             Some(list) => {
@@ -204,7 +207,8 @@ fn facts(t: &Transfer) -> (Vec<Fact>, bool) {
         && let Some((gain, inexact)) = gain_at_zero(t)
     {
         rounded |= inexact;
-        facts.push(("gain at zero frequency".to_owned(), vec![gain]));
+        let place = if t.variable == "z" { "gain at z = 1" } else { "gain at s = 0" };
+        facts.push((place.to_owned(), vec![gain]));
     }
     facts.extend(convergence(t).map(|text| ("converges".to_owned(), vec![text])));
     if !t.cancelled.is_empty() {
@@ -229,23 +233,18 @@ fn facts(t: &Transfer) -> (Vec<Fact>, bool) {
 fn symbols(form: &Form) -> Vec<&str> {
     let mut used = form.numerator.variables();
     used.extend(form.denominator.variables());
-    form.names.iter().filter(|(v, _)| *v != Var::S && !is_delay(*v) && used.contains(v)).map(|n| n.1.as_str()).collect()
-}
-
-/// An exact number of the results' notation as people write it: `1/1000` is `0.001`.
-fn plain(exact: &str) -> String {
-    let (n, d) = exact.split_once('/').unwrap_or((exact, "1"));
-    let value = n.parse::<IBig>().ok().zip(d.parse::<IBig>().ok()).and_then(|(n, d)| factors::ratio(&n, &d));
-    value.map_or_else(|| dotted(exact), |v| number::exact(&v))
+    let naming = naming(form, "");
+    let kept = form.names.iter().filter(|(v, _)| *v != Var::S && !naming.is_delay(*v) && used.contains(v));
+    kept.map(|n| n.1.as_str()).collect()
 }
 
 /// Why there is no list of poles or zeros, where that can be said.
 fn why_no_roots(t: &Transfer, name: &str) -> Option<String> {
     let form = t.form.as_ref()?;
     let p = if name == "poles" { &form.denominator } else { &form.numerator };
-    if p.variables().into_iter().any(is_delay) {
+    if p.variables().into_iter().any(|v| naming(form, t.variable).is_delay(v)) {
         let place = if name == "poles" { "below" } else { "above" };
-        return Some(format!("without number: there is a dead time {place} the rule"));
+        return Some(format!("infinitely many: there is a dead time {place} the rule"));
     }
     Some(format!("not worked out for degree {} unless --roots asks for them", p.degree(Var::S)))
 }
@@ -260,7 +259,8 @@ fn gain_at_zero(t: &Transfer) -> Option<(String, bool)> {
     if form.numerator.len() + form.denominator.len() > MAX_TERMS_AT_ZERO {
         return rounded;
     }
-    let (n, d) = (at_zero(&form.numerator, t.variable), at_zero(&form.denominator, t.variable));
+    let (n, d) =
+        (at_zero(&form.numerator, naming(form, t.variable)), at_zero(&form.denominator, naming(form, t.variable)));
     if d.is_zero() {
         return if n.is_zero() { rounded } else { Some((pole, false)) };
     }
@@ -279,9 +279,9 @@ fn gain_at_zero(t: &Transfer) -> Option<(String, bool)> {
 }
 
 /// A polynomial at s = 0 (every dead time is 1 there) or at z = 1.
-fn at_zero(p: &Poly, variable: &str) -> Poly {
-    let point = if variable == "z" { RBig::ONE } else { RBig::ZERO };
-    let delays = p.variables().into_iter().filter(|&v| is_delay(v));
+fn at_zero(p: &Poly, naming: Naming<'_>) -> Poly {
+    let point = if naming.variable == "z" { RBig::ONE } else { RBig::ZERO };
+    let delays = p.variables().into_iter().filter(|&v| naming.is_delay(v));
     let ones = delays.fold(p.clone(), |q, v| q.substitute(v, &RBig::ONE).0);
     ones.substitute(Var::S, &point).0
 }
@@ -312,13 +312,15 @@ fn warning_of_convergence(t: &Transfer) -> Option<String> {
     if t.stable != Some(false) || t.kind == TransferKind::Zeros {
         return None;
     }
-    let what = if t.kind == TransferKind::Loop {
-        "this return ratio alone has no steady-state response to a sine (the closed loop may well have one)".to_owned()
-    } else {
-        format!("a sine at {} has no steady-state response at {}", t.from, t.to)
-    };
     let line = if t.variable == "z" { "unit circle" } else { "jω axis" };
-    Some(format!("The {line} is not in the region of convergence: {what}."))
+    Some(if t.kind == TransferKind::Loop {
+        format!("The {line} is not in the region of convergence (no statement on the closed loop).")
+    } else {
+        let (to, from) = (&t.to, &t.from);
+        format!(
+            "The {line} is not in the region of convergence: a sine at {from} has no steady-state response at {to}."
+        )
+    })
 }
 
 /// Cancelled factors as one product.
@@ -333,24 +335,13 @@ fn cancelled(factors: &[String]) -> String {
     let more = counted.len().saturating_sub(MAX_LISTED);
     let told = counted.iter().take(MAX_LISTED).map(|(f, n)| {
         let power = if *n > 1 { number::superscript(*n) } else { String::new() };
-        let decimal = f.split(' ').map(plain_term).collect::<Vec<_>>().join(" ");
+        let decimal = dotted(f);
         if decimal.contains(' ') { format!("({decimal}){power}") } else { format!("{decimal}{power}") }
     });
     let list = told.collect::<Vec<_>>().join("·");
     let more = if more > 0 { format!(" and {more} more factors; --format json lists all") } else { String::new() };
     let hidden = if counted.len() > 1 || counted.iter().any(|c| c.1 > 1) { "hidden modes" } else { "a hidden mode" };
     format!("{list}{more}, {hidden}")
-}
-
-/// A word of a polynomial in the results' notation with its ratio as a decimal: `5/2*s` is `2.5·s`.
-fn plain_term(word: &str) -> String {
-    let (number, rest) = word.split_once('*').unwrap_or((word, ""));
-    let numeric = number.starts_with(|c: char| c.is_ascii_digit());
-    match (numeric, rest) {
-        (false, _) => dotted(word),
-        (true, "") => plain(number),
-        (true, rest) => format!("{}·{}", plain(number), dotted(rest)),
-    }
 }
 
 /// The characteristic polynomial of the whole netlist.
@@ -362,15 +353,15 @@ fn characteristic(page: &mut Page<'_>, c: &Characteristic, with_case: bool, styl
     };
     match &c.form {
         Some(form) => {
-            let written = factors::write(&form.denominator, &Poly::one(), style, c.variable == "z");
             let naming = naming(form, c.variable);
+            let written = factors::write(&form.denominator, &Poly::one(), style, naming);
             page.fraction(&label, &|out: &mut Words<'_>| written.numerator.words(out, naming), None)?;
         }
         None => page.line(&format!("{label}: not exact, a value in it is not rational"))?,
     }
     let mut facts: Vec<Fact> = Vec::new();
     for h in c.hidden.iter().take(MAX_LISTED) {
-        let factor = cancelled_factor(&h.factor);
+        let factor = dotted(&h.factor);
         let from = if h.from.len() > MAX_LISTED {
             format!("{} and {} more", h.from[..MAX_LISTED].join(", "), h.from.len() - MAX_LISTED)
         } else {
@@ -389,8 +380,4 @@ fn characteristic(page: &mut Page<'_>, c: &Characteristic, with_case: bool, styl
         page.facts(&facts)?;
     }
     Ok(false)
-}
-
-fn cancelled_factor(factor: &str) -> String {
-    factor.split(' ').map(plain_term).collect::<Vec<_>>().join(" ")
 }

@@ -1,9 +1,9 @@
 //! How a fraction is written: expanded, in factors, or in time constants.
 
 use super::number;
-use super::sum::{Naming, Scale, Words, is_delay};
+use super::sum::{Naming, Scale, Words};
 use crate::algebra::factor::factor;
-use crate::algebra::{IBig, Poly, RBig, UBig, Var};
+use crate::algebra::{IBig, Poly, RBig, Var};
 use dashu_base::{BitTest as _, UnsignedAbs as _};
 
 /// How `derive` writes a fraction.
@@ -56,13 +56,14 @@ pub(super) struct Factor {
 }
 
 /// Decides how to write a fraction.
-pub(super) fn write(numerator: &Poly, denominator: &Poly, style: FractionStyle, sampled: bool) -> Written {
+pub(super) fn write(numerator: &Poly, denominator: &Poly, style: FractionStyle, naming: Naming<'_>) -> Written {
     if numerator.is_zero() {
         return Written { numerator: Side::Sum(Poly::zero(), Scale::Whole), denominator: None, rounded: false };
     }
-    let style = if sampled && style == FractionStyle::TimeConstants { FractionStyle::Factored } else { style };
+    let no_time = naming.variable == "z" && style == FractionStyle::TimeConstants;
+    let style = if no_time { FractionStyle::Factored } else { style };
     if style != FractionStyle::Expanded
-        && let Some(written) = factored(numerator, denominator, style)
+        && let Some(written) = factored(numerator, denominator, style, naming)
     {
         return written;
     }
@@ -123,28 +124,47 @@ fn digits(c: &IBig) -> usize {
     if bits <= 60 { c.to_string().trim_start_matches('-').len() } else { bits * 301 / 1000 + 1 }
 }
 
-/// The fraction as products; `None` where that is not wished or not nice.
-fn factored(numerator: &Poly, denominator: &Poly, style: FractionStyle) -> Option<Written> {
+/// The fraction as products, or as a product over or under a sum; `None` where that is not wished or not nice.
+fn factored(numerator: &Poly, denominator: &Poly, style: FractionStyle, naming: Naming<'_>) -> Option<Written> {
     let asked = style != FractionStyle::Automatic;
-    let too_large = |p: &Poly| p.degree(Var::S) > FACTORED_UNASKED.0 || p.len() > FACTORED_UNASKED.1;
-    if !asked && (too_large(numerator) || too_large(denominator)) {
-        return None;
-    }
-    let (above, below) = (product(numerator, style), product(denominator, style));
-    if !asked && !(nice(&above.1, numerator) && nice(&below.1, denominator)) {
-        return None;
-    }
-    let gain = above.0 / below.0;
-    let (up, down) = match number::short_decimal(&gain) {
-        Some(text) => (text, "1".to_owned()),
-        None => (gain.numerator().to_string(), gain.denominator().to_string()),
+    let delays = |p: &Poly| p.variables().into_iter().any(|v| naming.is_delay(v));
+    let side = |p: &Poly| {
+        if !asked && (p.degree(Var::S) > FACTORED_UNASKED.0 || p.len() > FACTORED_UNASKED.1 || delays(p)) {
+            return None;
+        }
+        let made = product(p, style);
+        (asked || nice(&made.1, p)).then_some(made)
     };
-    let one = below.1.is_empty() && down == "1";
-    Some(Written {
-        numerator: Side::Product(up, above.1),
-        denominator: (!one).then(|| Side::Product(down, below.1)),
-        rounded: false,
-    })
+    let (above, below) = (side(numerator), side(denominator));
+    let whole = |p: &Poly| Side::Sum(p.clone(), Scale::Whole);
+    let short = |p: &Poly| p.terms().all(|t| digits(&t.1) <= MOST_EXACT_DIGITS);
+    match (above, below) {
+        (Some(above), Some(below)) => {
+            let gain = above.0 / below.0;
+            let (up, down) = match number::short_decimal(&gain) {
+                Some(text) => (text, "1".to_owned()),
+                None => (gain.numerator().to_string(), gain.denominator().to_string()),
+            };
+            let one = below.1.is_empty() && down == "1";
+            let below = (!one).then(|| Side::Product(down, below.1));
+            Some(Written { numerator: Side::Product(up, above.1), denominator: below, rounded: false })
+        }
+        // A product beside a sum of whole numbers, where it really is one.
+        (Some((gain, factors)), None) if is_product(&factors) && short(denominator) => {
+            let above = Side::Product(number::exact(&gain), factors);
+            Some(Written { numerator: above, denominator: Some(whole(denominator)), rounded: false })
+        }
+        (None, Some((gain, factors))) if is_product(&factors) && short(numerator) => {
+            let below = Side::Product(number::exact(&gain), factors);
+            Some(Written { numerator: whole(numerator), denominator: Some(below), rounded: false })
+        }
+        _ => None,
+    }
+}
+
+/// Whether there is more than one factor, repeated ones counted.
+fn is_product(factors: &[Factor]) -> bool {
+    factors.iter().map(|f| f.exponent).sum::<u32>() > 1
 }
 
 /// A polynomial as a number times factors, each written with its leading coefficient or its constant 1 where that
@@ -160,7 +180,9 @@ fn product(p: &Poly, style: FractionStyle) -> (RBig, Vec<Factor>) {
         let by = if time { constant.unwrap_or(IBig::ONE) } else { poly.leading_coefficient() };
         let scale = RBig::from_parts_signed(IBig::ONE, by.clone());
         let short = poly.terms().all(|t| number::short_decimal(&(RBig::from(t.1) * &scale)).is_some());
-        let scale = if (short || time) && !by.is_one() {
+        // A ratio in a factor that nobody takes in at a glance helps nobody.
+        let wished = short || (time && poly.degree(Var::S) <= 2);
+        let scale = if wished && !by.is_one() {
             for _ in 0..exponent {
                 unit *= RBig::from(by.clone());
             }
@@ -168,17 +190,23 @@ fn product(p: &Poly, style: FractionStyle) -> (RBig, Vec<Factor>) {
         } else {
             Scale::Whole
         };
-        factors.push(Factor { poly, exponent, scale, seconds: time });
+        factors.push(Factor { poly, exponent, scale, seconds: time && wished });
     }
-    // Constants, then powers of s, then the rest by degree.
-    factors.sort_by_key(|f| (f.poly.degree(Var::S), f.poly.len()));
+    // Constants, then powers of s, then the rest by degree, the slow ones first.
+    factors.sort_by_cached_key(|f| (f.poly.degree(Var::S), f.poly.len(), last_over_first(&f.poly)));
     (unit, factors)
+}
+
+/// The last coefficient over the first.
+fn last_over_first(p: &Poly) -> RBig {
+    let last = p.terms().last().map_or(IBig::ZERO, |t| t.1);
+    RBig::from_parts_signed(last, p.leading_coefficient())
 }
 
 /// Whether a product reads better than the sum: it really has factors, all of a degree that a person takes in, and
 /// is not longer.
 fn nice(factors: &[Factor], sum: &Poly) -> bool {
-    let small = factors.iter().all(|f| f.poly.degree(Var::S) <= 2 && !f.poly.variables().into_iter().any(is_delay));
+    let small = factors.iter().all(|f| f.poly.degree(Var::S) <= 2);
     let terms: usize = factors.iter().map(|f| f.poly.len()).sum();
     small && terms <= sum.len().max(3) * 2
 }
@@ -230,11 +258,4 @@ impl Factor {
             }
         }
     }
-}
-
-/// `n/d` with the sign in front, in lowest terms.
-pub(super) fn ratio(n: &IBig, d: &IBig) -> Option<RBig> {
-    let below = UBig::try_from(d.clone()).or_else(|_| UBig::try_from(-d.clone())).ok().filter(|x| !x.is_zero())?;
-    let above = if *d < IBig::ZERO { -n.clone() } else { n.clone() };
-    Some(RBig::from_parts(above, below))
 }

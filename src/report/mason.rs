@@ -74,9 +74,8 @@ pub fn mason(document: &Mason, options: TextOptions, out: &mut dyn Write) -> io:
     page.gap()?;
     match &document.gain.form {
         Some(form) => {
-            let written =
-                factors::write(&form.numerator, &form.denominator, options.fraction, document.variable == "z");
             let naming = naming(form, document.variable);
+            let written = factors::write(&form.numerator, &form.denominator, options.fraction, naming);
             let above = |out: &mut Words<'_>| written.numerator.words(out, naming);
             let below = |out: &mut Words<'_>| {
                 if let Some(side) = &written.denominator {

@@ -4,7 +4,7 @@ use crate::algebra::{IBig, RBig, UBig};
 use dashu_base::{BitTest as _, UnsignedAbs as _};
 
 /// The most significant digits of a decimal that still reads well; a longer one is told as a ratio, or rounded.
-const MAX_DECIMAL_DIGITS: usize = 10;
+const MAX_DECIMAL_DIGITS: usize = 12;
 
 /// Significant digits of a rounded number in text. JSON has them all.
 pub(super) const ROUNDED_DIGITS: usize = 6;
@@ -79,13 +79,18 @@ pub(super) fn rounded(value: &RBig) -> String {
 
 /// A floating-point number rounded to [`ROUNDED_DIGITS`] significant digits.
 pub(super) fn float(value: f64) -> String {
+    rounded_float(value, ROUNDED_DIGITS)
+}
+
+/// A floating-point number rounded to so many significant digits.
+pub(super) fn rounded_float(value: f64, digits: usize) -> String {
     if value == 0.0 {
         return "0".to_owned();
     }
     if !value.is_finite() {
         return if value > 0.0 { "∞".to_owned() } else { "-∞".to_owned() };
     }
-    let text = format!("{:.*e}", ROUNDED_DIGITS - 1, value.abs());
+    let text = format!("{:.*e}", digits - 1, value.abs());
     let (mantissa, exponent) = text.split_once('e').unwrap_or((&text, "0"));
     let digits = mantissa.replace('.', "");
     styled(value < 0.0, digits.trim_end_matches('0'), exponent.parse().unwrap_or(0))
@@ -136,6 +141,7 @@ mod tests {
         assert_eq!(told(120_000, 1), "120000");
         assert_eq!(told(12_000_000_000, 1), "1.2e10");
         assert_eq!(told(123_456_789, 1), "123456789");
+        assert_eq!(told(1_124_546_350_400_000_000, 1), "1.1245463504e18");
         assert_eq!(told(1_002_001, 10_000), "100.2001");
         assert_eq!(told(1, 1 << 40), "1/1099511627776");
     }

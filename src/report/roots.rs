@@ -1,9 +1,13 @@
 //! Poles and zeros, one to a line: a conjugate pair with its frequency and damping, a real one with its time constant.
 
 use super::derive::MAX_LISTED;
-use super::number::float;
+use super::number::{float, rounded_float};
 use crate::results::{Root, Transfer};
 use unicode_width::UnicodeWidthStr as _;
+
+/// Significant digits of a frequency, a damping ratio or a time constant beside a root: enough to work with, and
+/// few enough for one line of 80 columns.
+const DIGITS_BESIDE: usize = 4;
 
 /// Which plane the roots lie in.
 pub(super) enum Plane {
@@ -52,8 +56,7 @@ pub(super) struct Told {
 /// Tells roots in the order in which they stand, both of a pair on one line.
 pub(super) fn lines(list: &[Root], plane: &Plane, poles: bool) -> Told {
     let mut rounded = false;
-    let mut tell = |x: f64| {
-        let text = float(x);
+    let mut told = |text: String, x: f64| {
         rounded |= text.parse() != Ok(x);
         text
     };
@@ -63,9 +66,9 @@ pub(super) fn lines(list: &[Root], plane: &Plane, poles: bool) -> Told {
     let mut rows: Vec<(String, String)> = Vec::new();
     for r in shown.iter().take(MAX_LISTED) {
         let place = match (r.re == 0.0, r.im == 0.0) {
-            (_, true) => tell(r.re),
-            (true, false) => format!("±j{}", tell(r.im)),
-            (false, false) => format!("{} ± j{}", tell(r.re), tell(r.im)),
+            (_, true) => told(float(r.re), r.re),
+            (true, false) => format!("±j{}", told(float(r.im), r.im)),
+            (false, false) => format!("{} ± j{}", told(float(r.re), r.re), told(float(r.im), r.im)),
         };
         let times = match r.multiplicity {
             1 => String::new(),
@@ -74,10 +77,13 @@ pub(super) fn lines(list: &[Root], plane: &Plane, poles: bool) -> Told {
         };
         let besides = match plane.frequency_and_damping(*r) {
             Some((frequency, damping)) if r.im > 0.0 => {
-                format!("ω_n = {} rad/s, ζ = {}", tell(frequency), tell(damping))
+                let frequency = told(rounded_float(frequency, DIGITS_BESIDE), frequency);
+                let damping = told(rounded_float(damping, DIGITS_BESIDE), damping);
+                format!("ω_n = {frequency} rad/s, ζ = {damping}")
             }
             Some((frequency, damping)) if poles && damping == 1.0 => {
-                format!("time constant {} s", tell(1.0 / frequency))
+                let time = 1.0 / frequency;
+                format!("time constant {} s", told(rounded_float(time, DIGITS_BESIDE), time))
             }
             _ => String::new(),
         };

@@ -5,7 +5,6 @@
 
 use super::number::{self, superscript};
 use crate::algebra::{IBig, Poly, RBig, UBig, Var};
-use crate::netlist::values::{DELAYS, PARAMS};
 use dashu_base::UnsignedAbs as _;
 use std::collections::BTreeMap;
 
@@ -117,11 +116,6 @@ pub(super) struct Naming<'a> {
 
 type Monomial = Vec<(Var, u32)>;
 
-/// Whether a variable stands for a dead time.
-pub(super) fn is_delay(var: Var) -> bool {
-    (DELAYS..PARAMS).contains(&var.0)
-}
-
 impl Naming<'_> {
     fn name(&self, var: Var) -> &str {
         if var == Var::S {
@@ -131,13 +125,22 @@ impl Naming<'_> {
         found.and_then(|i| self.names.get(i)).map_or("?", |n| &n.1)
     }
 
-    /// A power of a variable; a dead time's is the dead time as often.
-    fn power(&self, var: Var, exponent: u32) -> String {
+    /// Whether a variable stands for a dead time: no other has a name like this.
+    pub(super) fn is_delay(&self, var: Var) -> bool {
+        self.name(var).starts_with("exp(")
+    }
+
+    /// Adds a power of a variable; a dead time's is the dead time as often.
+    fn power(&self, out: &mut Words<'_>, var: Var, exponent: u32) {
         let name = self.name(var);
-        if is_delay(var) {
-            return delay_power(name, exponent);
+        if exponent == 1 && !name.contains('(') {
+            out.push(name);
+        } else if self.is_delay(var) {
+            out.push(&delay_power(name, exponent));
+        } else {
+            out.push(name);
+            out.push(&superscript(exponent));
         }
-        if exponent == 1 { name.to_owned() } else { format!("{name}{}", superscript(exponent)) }
     }
 
     /// The whole polynomial as a sum, collected by powers of the variable, and by dead times before that.
@@ -146,12 +149,12 @@ impl Naming<'_> {
             out.push("0");
             return;
         }
-        if !p.variables().into_iter().any(is_delay) {
+        if !p.variables().into_iter().any(|v| self.is_delay(v)) {
             return self.collected(out, p.terms(), scale, true);
         }
         let mut groups: BTreeMap<Monomial, Vec<(Monomial, IBig)>> = BTreeMap::new();
         for (monomial, c) in p.terms() {
-            let (delays, rest): (Monomial, Monomial) = monomial.into_iter().partition(|&(v, _)| is_delay(v));
+            let (delays, rest): (Monomial, Monomial) = monomial.into_iter().partition(|&(v, _)| self.is_delay(v));
             groups.entry(delays).or_default().push((rest, c));
         }
         let mut first = true;
@@ -166,7 +169,7 @@ impl Naming<'_> {
                     if out.in_product() {
                         out.dot();
                     }
-                    out.push(&self.power(v, e));
+                    self.power(out, v, e);
                 }
             }
             first = false;
@@ -218,7 +221,7 @@ impl Naming<'_> {
             }
             out.push(")");
             out.dot();
-            out.push(&self.power(Var::S, power));
+            self.power(out, Var::S, power);
         }
     }
 
@@ -237,14 +240,14 @@ impl Naming<'_> {
             if any {
                 out.dot();
             }
-            out.push(&self.power(v, e));
+            self.power(out, v, e);
             any = true;
         }
         if power > 0 {
             if any {
                 out.dot();
             }
-            out.push(&self.power(Var::S, power));
+            self.power(out, Var::S, power);
             any = true;
         }
         if !any && one {
@@ -298,33 +301,63 @@ fn delay_power(name: &str, exponent: u32) -> String {
     if told == "1" { "exp(-s)".to_owned() } else { format!("exp(-{told}·s)") }
 }
 
-/// An expression of the results' own notation with centre dots and raised exponents: `2*Kp^2` is `2·Kp²`.
+/// An expression of the results' own notation as people write it: centre dots, raised exponents, decimals.
+/// `2*Kp^2/(5/2*s + 17001600000000)` is `2·Kp²/(2.5·s + 1.70016e13)`.
 pub(super) fn dotted(expression: &str) -> String {
     let mut out = String::with_capacity(expression.len());
     let mut rest = expression;
-    while let Some(at) = rest.find(['*', '^']) {
-        out.push_str(&rest[..at]);
-        let power = rest[at..].starts_with('^');
-        rest = &rest[at + 1..];
+    let mut last = ' ';
+    while let Some(c) = rest.chars().next() {
         let digits = rest.bytes().take_while(u8::is_ascii_digit).count();
-        match rest[..digits].parse() {
-            Ok(exponent) if power => {
-                out.push_str(&superscript(exponent));
-                rest = &rest[digits..];
-            }
-            _ => out.push(if power { '^' } else { '·' }),
+        // Digits inside a name belong to it.
+        if digits > 0 && !(last.is_alphanumeric() || matches!(last, '_' | '.')) {
+            let (text, after) = number_at(rest, digits, last == '/');
+            out.push_str(&text);
+            rest = after;
+            last = '0';
+            continue;
         }
+        rest = &rest[c.len_utf8()..];
+        let power = rest.bytes().take_while(u8::is_ascii_digit).count();
+        match (c, rest[..power].parse()) {
+            ('^', Ok(exponent)) => {
+                out.push_str(&superscript(exponent));
+                rest = &rest[power..];
+            }
+            ('*', _) => out.push('·'),
+            _ => out.push(c),
+        }
+        last = c;
     }
-    out + rest
+    out
+}
+
+/// A whole number or a ratio at the beginning of a text, as a decimal where it has a short one, and what follows.
+fn number_at(text: &str, digits: usize, below: bool) -> (String, &str) {
+    let (whole, rest) = text.split_at(digits);
+    let told = |n: &str, d: &str| {
+        let (n, d) = (n.parse::<IBig>().ok()?, d.parse::<UBig>().ok().filter(|d| !d.is_zero())?);
+        number::short_decimal(&RBig::from_parts(n, d))
+    };
+    let divisor = rest.strip_prefix('/').map_or("", |r| &r[..r.bytes().take_while(u8::is_ascii_digit).count()]);
+    let after = rest.get(1 + divisor.len()..).unwrap_or_default();
+    // `3/4^2` and `1/2/3` are no ratio of the two.
+    if !divisor.is_empty() && !below && !after.starts_with('^') {
+        if let Some(text) = told(whole, divisor) {
+            return (text, after);
+        }
+        return (format!("{whole}/{divisor}"), after);
+    }
+    (told(whole, "1").unwrap_or_else(|| whole.to_owned()), rest)
 }
 
 #[cfg(test)]
 mod tests {
     use super::*;
 
-    const K: Var = Var(PARAMS);
-    const T: Var = Var(PARAMS + 1);
-    const DELAY: Var = Var(DELAYS);
+    const DELAY: Var = Var(1);
+    const K: Var = Var(2);
+    const T: Var = Var(3);
 
     fn term(c: i64, powers: &[(Var, u32)]) -> (Monomial, IBig) {
         (powers.to_vec(), IBig::from(c))
@@ -391,6 +424,8 @@ mod tests {
     #[test]
     fn the_notation_of_results_is_set_with_dots() {
         assert_eq!(dotted("2*Kp^2 - b^12*a"), "2·Kp² - b¹²·a");
+        assert_eq!(dotted("(5/2*s + 17001600000000)/(3*y1 + C_2/3)"), "(2.5·s + 1.70016e13)/(3·y1 + C_2/3)");
+        assert_eq!(dotted("1/3 - 23/200 + x/2/4 + 12/(s^10 + ζ2)"), "1/3 - 0.115 + x/2/4 + 12/(s¹⁰ + ζ2)");
     }
 
     #[test]

@@ -2,13 +2,13 @@
 
 use super::*;
 use crate::algebra::{IBig, Poly, Var};
-use crate::netlist::values::{DELAYS, PARAMS, PI};
+use crate::results::mason::{Mason, MasonBranch, MasonGain, MasonGroup, MasonLoop, MasonPath, MasonResult};
 use crate::results::{Decimal, Derive, Form, Root, Transfer, TransferKind};
 
 const S: Var = Var::S;
-const K: Var = Var(PARAMS);
-const T: Var = Var(PARAMS + 1);
-const DELAY: Var = Var(DELAYS);
+const DELAY: Var = Var(1);
+const K: Var = Var(2);
+const T: Var = Var(3);
 
 fn poly(terms: &[(i64, &[(Var, u32)])]) -> Poly {
     Poly::from_terms(terms.iter().map(|(c, m)| (m.to_vec(), IBig::from(*c))))
@@ -21,7 +21,7 @@ fn dense(coefficients: &[i64]) -> Poly {
 }
 
 fn transfer(numerator: Poly, denominator: Poly) -> Transfer {
-    let names = [(DELAY, "exp(-(1/10)*s)"), (K, "Kp"), (T, "Ti"), (PI, "pi")];
+    let names = [(DELAY, "exp(-(1/10)*s)"), (K, "Kp"), (T, "Ti")];
     Transfer {
         kind: TransferKind::Transfer,
         to: "y".into(),
@@ -91,15 +91,15 @@ fn a_stable_transfer_function_has_all_its_facts() {
 y / r = ─────────────────────────
          (s + 1)·(s² + 4·s + 13)
 
-  poles                    s = -1        time constant 1 s
-                           s = -2 ± j3   ω_n = 3.60555 rad/s, ζ = 0.5547
-  zeros                    s = -4
-  gain at zero frequency   96/13
-  converges                right of Re s = -1; the jω axis lies inside
-  cancelled                (s + 2)²·(s + 1/3), hidden modes
+  poles           s = -1        time constant 1 s
+                  s = -2 ± j3   ω_n = 3.606 rad/s, ζ = 0.5547
+  zeros           s = -4
+  gain at s = 0   96/13
+  converges       right of Re s = -1; the jω axis lies inside
+  cancelled       (s + 2)²·(s + 1/3), hidden modes
 
-Roots and figures are rounded to 6 digits here; fractions are exact unless they
-say otherwise.
+Roots and figures are rounded here (--format json has all digits); fractions are
+exact unless they say otherwise.
 "
     );
 }
@@ -126,7 +126,7 @@ y / r = ───────────────────────
         "
                0.6·(0.5 [s]·s + 1)
 y / r = ─────────────────────────────────
-         (0.1 [s]·s + 1)·(2.5 [s]·s + 1)"
+         (2.5 [s]·s + 1)·(0.1 [s]·s + 1)"
     );
     assert_eq!(
         fraction(lags(), FractionStyle::Factored),
@@ -134,6 +134,13 @@ y / r = ────────────────────────
             1.2·(s + 2)
 y / r = ────────────────────
          (s + 0.4)·(s + 10)"
+    );
+    assert_eq!(
+        fraction(transfer(dense(&[1, 5, 6]), dense(&[1, 1, 3, 7])), FractionStyle::Automatic),
+        "
+          (s + 2)·(s + 3)
+y / r = ───────────────────
+         s³ + s² + 3·s + 7"
     );
     assert_eq!(
         fraction(transfer(dense(&[7]), dense(&[3, 0, 75, 0, 0])), FractionStyle::TimeConstants),
@@ -161,9 +168,9 @@ fn symbols_and_dead_times_keep_their_names() {
 y / r = ───────────────────────────────
          Ti·s² + (Kp·Ti + 2·Ti)·s + Kp
 
-  symbols                  Kp, Ti
-  poles, zeros             depend on the symbols
-  gain at zero frequency   1
+  symbols         Kp, Ti
+  poles, zeros    depend on the symbols
+  gain at s = 0   1
 "
     );
     let delayed = transfer(poly(&[(1, &[(DELAY, 1)])]), poly(&[(2, &[(S, 1)]), (1, &[(DELAY, 1)])]));
@@ -175,9 +182,9 @@ y / r = ────────────────────────
 y / r = ───────────────────
          2·s + exp(-0.1·s)
 
-  poles                    without number: there is a dead time below the rule
-  zeros                    without number: there is a dead time above the rule
-  gain at zero frequency   1
+  poles           infinitely many: there is a dead time below the rule
+  zeros           infinitely many: there is a dead time above the rule
+  gain at s = 0   1
 "
     );
 }
@@ -212,23 +219,23 @@ fn a_transform_that_does_not_converge_on_the_axis_is_said_so_in_a_sentence() {
 loop at u in nominal = ────────────────
                         3·s²·(s² + 25)
 
-  poles                    s = 0 (twice)
-                           s = ±j5         ω_n = 5 rad/s, ζ = 0
-  zeros                    none
-  gain at zero frequency   none: there is a pole at s = 0
-  converges                right of Re s = 0
-  The jω axis is not in the region of convergence: this return ratio alone has
-  no steady-state response to a sine (the closed loop may well have one).
+  poles           s = 0 (twice)
+                  s = ±j5         ω_n = 5 rad/s, ζ = 0
+  zeros           none
+  gain at s = 0   none: there is a pole at s = 0
+  converges       right of Re s = 0
+  The jω axis is not in the region of convergence (no statement on the closed
+  loop).
 
 
                                1
 y / r with v open in cold = ───────
                              s - 2
 
-  poles                    s = 2
-  zeros                    none
-  gain at zero frequency   -0.5
-  converges                right of Re s = 2
+  poles           s = 2
+  zeros           none
+  gain at s = 0   -0.5
+  converges       right of Re s = 2
   The jω axis is not in the region of convergence: a sine at r has no
   steady-state response at y.
 "
@@ -255,14 +262,14 @@ fn sampled_results_speak_of_the_circle() {
 y / r = ───────────────
             z - 0.8
 
-  sampled every            0.001 s
-  poles                    z = 0.8   time constant 0.00448142 s
-  zeros                    z = -0.5
-  gain at zero frequency   1.5
-  converges                outside |z| = 0.8; the unit circle lies inside
+  sampled every   0.001 s
+  poles           z = 0.8   time constant 0.004481 s
+  zeros           z = -0.5
+  gain at z = 1   1.5
+  converges       outside |z| = 0.8; the unit circle lies inside
 
-Roots and figures are rounded to 6 digits here; fractions are exact unless they
-say otherwise.
+Roots and figures are rounded here (--format json has all digits); fractions are
+exact unless they say otherwise.
 "
     );
 }
@@ -283,18 +290,18 @@ fn rounded_results_say_so() {
     let text = told(vec![transfer(dense(&[1]), long)], FractionStyle::Automatic);
     assert!(text.contains("    s²⁹ + 0.142857·s²⁸ + "), "{text}");
     assert!(text.contains("  Coefficients are rounded to 6 digits here; --format json has them exactly.\n"), "{text}");
-    assert!(text.contains("gain at zero frequency   1.96842e-51\n"), "{text}");
+    assert!(text.contains("gain at s = 0   1.96842e-51\n"), "{text}");
 }
 
 #[test]
 fn long_sums_and_long_lists_are_broken_and_cut() {
     let terms = (0..40u32).map(|k| {
-        let powers = vec![(S, k % 7), (Var(PARAMS + k % 5), 1 + k % 3), (Var(PARAMS + k % 4), 1)];
+        let powers = vec![(S, k % 7), (Var(2 + k % 5), 1 + k % 3), (Var(2 + k % 4), 1)];
         (powers, IBig::from(i64::from(k) - 12))
     });
     let mut t = transfer(dense(&[1]), Poly::from_terms(terms));
     if let Some(form) = &mut t.form {
-        form.names = (0..5).map(|k| (Var(PARAMS + k), format!("K_{k}"))).collect();
+        form.names = (0..5).map(|k| (Var(2 + k), format!("K_{k}"))).collect();
     }
     t.to = "az.motor.shaft.position".into();
     t.from = "commanded_azimuth".into();
@@ -321,4 +328,103 @@ fn nothing_is_written_of_no_results() {
     let mut out = Vec::new();
     derive(&document, TextOptions::default(), &mut out).expect("a vector takes it");
     assert!(out.is_empty());
+}
+
+/// Two lags in a row, each with a loop of its own.
+fn two_loops() -> Mason {
+    let branch = |name: &str, from: &str, to: &str, expression: &str| MasonBranch {
+        name: name.into(),
+        from: from.into(),
+        to: to.into(),
+        expression: expression.into(),
+    };
+    let list = |text: &str| text.split(' ').map(str::to_owned).collect::<Vec<_>>();
+    let gain = |name: &str, names: &str, expression: &str| MasonGain {
+        name: name.into(),
+        names: names.into(),
+        expression: expression.into(),
+    };
+    let one = |k: u32, letter: &str, expression: &str| MasonLoop {
+        name: format!("L{k}"),
+        signals: list(&format!("e{k} y{k}")),
+        branches: vec![branch(letter, &format!("e{k}"), &format!("y{k}"), expression.trim_start_matches('-'))],
+        names: format!("-{letter}"),
+        expression: expression.into(),
+    };
+    Mason {
+        schema: "loopwright.mason.1",
+        model: "two_tanks".into(),
+        ok: true,
+        diagnostics: vec![],
+        to: "y2".into(),
+        from: "r".into(),
+        at: vec![],
+        open: vec![],
+        kept: vec![],
+        case: "nominal".into(),
+        variable: "s",
+        sampling_period: None,
+        exact: true,
+        paths: vec![MasonPath {
+            name: "P1".into(),
+            signals: list("r e1 y1 e2 y2"),
+            branches: vec![branch("A", "e1", "y1", "1/(2*s)"), branch("B", "e2", "y2", "23/20")],
+            names: "A*B".into(),
+            expression: "23/(40*s)".into(),
+            touches: list("L1 L2"),
+        }],
+        loops: vec![one(1, "A", "-1/(2*s)"), one(2, "B", "-23/20")],
+        groups: vec![MasonGroup { loops: list("L1 L2"), expression: "23/(40*s)".into() }],
+        determinant: gain("D", "1 - L1 - L2 + L1*L2", "(86*s + 43)/(40*s)"),
+        cofactors: vec![gain("D1", "1", "1")],
+        gain: MasonResult {
+            names: "P1*D1/D".into(),
+            expression: "23/(86*s + 43)".into(),
+            numerator: None,
+            denominator: None,
+            form: Some(Form { numerator: dense(&[23]), denominator: dense(&[86, 43]), names: vec![] }),
+        },
+    }
+}
+
+#[test]
+fn masons_rule_can_be_followed_with_a_pencil() {
+    let mut out = Vec::new();
+    mason(&two_loops(), TextOptions::default(), &mut out).expect("a vector takes it");
+    assert_eq!(
+        String::from_utf8_lossy(&out),
+        "two_tanks, nominal values: y2 / r by Mason's gain rule
+
+Branches
+  A   e1 → y1   1/(2·s)
+  B   e2 → y2   1.15
+
+Forward paths
+  P1 = A·B = 23/(40·s)
+       r → e1 → y1 → e2 → y2
+       touches L1, L2
+
+Loops
+  L1 = -A = -1/(2·s)
+       e1 → y1 → e1
+  L2 = -B = -1.15
+       e2 → y2 → e2
+
+Groups of loops that do not touch one another
+  L1·L2 = 23/(40·s)
+
+Determinant
+  D = 1 - L1 - L2 + L1·L2 = (86·s + 43)/(40·s)
+
+Cofactors: the determinant without the loops that touch the path
+  D1 = 1
+
+Gain
+  y2 / r = P1·D1/D
+
+               23
+y2 / r = ──────────────
+          86·(s + 0.5)
+"
+    );
 }

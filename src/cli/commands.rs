@@ -1,0 +1,251 @@
+//! The commands that read a model: each joins the rooms, writes its document and says how it went.
+
+use super::arguments::{self, Format, Fraction, Values};
+use super::files::{self, Destination, FileSystem};
+use super::terminal::Looks;
+use super::{Failure, IN_ERROR, LIMIT_REACHED, tell};
+use crate::diagnostics::{self, Code, Diagnostic, Severity};
+use crate::flow::{self, DeriveOptions, Method};
+use crate::netlist::{Netlist, RequestKind};
+use crate::report::{self, TextOptions};
+use crate::resolve::{self, CommandLine};
+use crate::results::{Derive, ToldDiagnostic};
+use crate::source::SourceMap;
+use std::path::Path;
+
+/// A model as far as it could be read.
+struct Model {
+    sources: SourceMap,
+    /// None where the file could not be read, or a named limit ended the reading.
+    netlist: Option<Netlist>,
+    diagnostics: Vec<Diagnostic>,
+}
+
+impl Model {
+    /// Reads and resolves one file.
+    fn read(path: &str, line: &CommandLine) -> Self {
+        let mut sources = SourceMap::new();
+        let input = match files::read(path, &mut sources) {
+            Ok(input) => input,
+            Err(diagnostic) => return Self { sources, netlist: None, diagnostics: vec![diagnostic] },
+        };
+        let resolved = resolve::resolve(&mut sources, input.id, &FileSystem, line);
+        let mut diagnostics = resolved.diagnostics;
+        if !input.unreadable.is_empty() {
+            // What is no UTF-8 is no syntax either: each line is told once.
+            let line_of = |d: &Diagnostic| {
+                d.labels.first().and_then(|l| sources.place(l.span)).map(|p| (p.file.to_owned(), p.line))
+            };
+            let bad: Vec<_> = input.unreadable.iter().map(line_of).collect();
+            diagnostics.retain(|d| d.code != Code::Syntax || !bad.contains(&line_of(d)));
+            diagnostics.extend(input.unreadable);
+            sort(&mut diagnostics);
+        }
+        Self { sources, netlist: resolved.netlist, diagnostics }
+    }
+
+    /// The netlist, where it is fit to be worked with.
+    fn sound(&self) -> Option<&Netlist> {
+        self.netlist.as_ref().filter(|_| !self.diagnostics.iter().any(Diagnostic::is_error))
+    }
+
+    /// More to tell of it.
+    fn add(&mut self, diagnostics: Vec<Diagnostic>) {
+        self.diagnostics.extend(diagnostics);
+        sort(&mut self.diagnostics);
+    }
+
+    /// Its name: the model's own, or else the file's stem.
+    fn name(&self, path: &str) -> String {
+        let stem = || Path::new(path).file_stem().map_or_else(|| path.to_owned(), |s| s.to_string_lossy().into_owned());
+        self.netlist.as_ref().map_or_else(stem, |n| n.model.clone())
+    }
+
+    fn told(&self) -> Vec<ToldDiagnostic> {
+        report::told(&self.diagnostics, &self.sources)
+    }
+
+    /// The exit status so far: a limit wins over an error.
+    fn status(&self, before: u8) -> u8 {
+        let limit = self.diagnostics.iter().any(|d| d.code == Code::LimitReached && d.is_error());
+        let error = self.diagnostics.iter().any(Diagnostic::is_error);
+        before.max(if limit {
+            LIMIT_REACHED
+        } else if error {
+            IN_ERROR
+        } else {
+            0
+        })
+    }
+
+    /// Draws all diagnostics on standard error, with a line that counts them.
+    fn tell(&self, looks: Looks) {
+        if !self.diagnostics.is_empty() {
+            let drawn = diagnostics::render(&self.diagnostics, &self.sources, looks.errors);
+            tell(&format!("{drawn}{}\n", diagnostics::summary(&self.diagnostics)));
+        }
+    }
+}
+
+/// In the order of the text; what stands in none comes last.
+fn sort(diagnostics: &mut [Diagnostic]) {
+    diagnostics.sort_by_key(|d| d.labels.first().map_or(crate::source::Span::NONE, |l| l.span));
+}
+
+fn command_line(values: &Values, requests: Vec<String>) -> CommandLine {
+    CommandLine { requests, settings: values.set.clone(), case: values.case.clone(), keep: values.keep.clone() }
+}
+
+fn text_options(fraction: Option<Fraction>, looks: Looks) -> TextOptions {
+    TextOptions { width: looks.output.width, fraction: Fraction::style(fraction) }
+}
+
+/// `check`: each file on its own, one document for all. In JSON the diagnostics stand in the document only.
+pub(super) fn check(arguments: &arguments::Check, looks: Looks, status: &mut u8) -> Result<(), Failure> {
+    let line = command_line(&arguments.values, Vec::new());
+    let json = arguments.output.format == Format::Json;
+    let mut all: Vec<ToldDiagnostic> = Vec::new();
+    let mut lines = String::new();
+    for path in &arguments.files {
+        let mut model = Model::read(path, &line);
+        if let Some(netlist) = &model.netlist {
+            let mut told = flow::check(netlist);
+            if model.diagnostics.iter().any(breaks_the_wiring) {
+                told.retain(|d| !matches!(d.code, Code::UnusedBlock | Code::HiddenUnstableMode));
+            }
+            model.add(told);
+        }
+        *status = model.status(*status);
+        // A file that several use is told of once.
+        let told = model.told();
+        if all.is_empty() {
+            all = told;
+        } else {
+            let mut fresh = told.iter().map(|d| !all.contains(d)).collect::<Vec<_>>().into_iter();
+            model.diagnostics.retain(|_| fresh.next().unwrap_or(true));
+            let more: Vec<_> = told.into_iter().filter(|d| !all.contains(d)).collect();
+            all.extend(more);
+        }
+        if !json {
+            model.tell(looks);
+            lines += &summary(path, &model);
+        }
+    }
+    let mut out = Destination::open(arguments.output.output.as_deref())?;
+    if json {
+        report::json(&report::check(all), &mut out)?;
+    } else {
+        std::io::Write::write_all(&mut out, lines.as_bytes())?;
+    }
+    Ok(out.finish()?)
+}
+
+/// Whether a mistake leaves signals apart that may belong together: what seems unused then may well be used.
+fn breaks_the_wiring(d: &Diagnostic) -> bool {
+    let wiring = matches!(
+        d.code,
+        Code::Syntax
+            | Code::UnknownName
+            | Code::DuplicateName
+            | Code::DrivenTwice
+            | Code::UndrivenSignal
+            | Code::UseNotFound
+            | Code::UseCycle
+    );
+    d.is_error() && wiring
+}
+
+/// `heliostat.loop: 12 blocks, 5 sums, nothing to report`
+fn summary(path: &str, model: &Model) -> String {
+    let Some(netlist) = model.sound() else { return String::new() };
+    let count = |n: usize, word: &str| format!("{n} {word}{}", if n == 1 { "" } else { "s" });
+    let told = diagnostics::summary(&model.diagnostics);
+    format!(
+        "{}: {}, {}, {}\n",
+        diagnostics::clean(path),
+        count(netlist.blocks.len(), "block"),
+        count(netlist.sums.len(), "sum"),
+        if told.is_empty() { "nothing to report" } else { &told }
+    )
+}
+
+/// `derive`: diagnostics go to standard error in either format, and stand in the JSON document too.
+pub(super) fn derive(arguments: &arguments::Derive, looks: Looks, status: &mut u8) -> Result<(), Failure> {
+    let line = command_line(&arguments.values, arguments.requests.clone());
+    let mut model = Model::read(&arguments.file, &line);
+    let options = DeriveOptions {
+        roots: arguments.roots,
+        method: match arguments.method {
+            arguments::Method::Elimination => Method::Elimination,
+            arguments::Method::Mason => Method::Mason,
+        },
+        verify: arguments.verify,
+        characteristic: arguments.characteristic,
+    };
+    let (mut transfers, mut characteristic) = (Vec::new(), Vec::new());
+    if let Some(netlist) = model.sound() {
+        if netlist.requests.is_empty() && !arguments.characteristic {
+            tell("nothing is asked for: add a line such as `find y / r` to the file, or name it on the command line\n");
+        }
+        let derived = flow::derive(netlist, &options);
+        (transfers, characteristic) = (derived.transfers, derived.characteristic);
+        model.add(derived.diagnostics);
+    }
+    *status = model.status(*status);
+    model.tell(looks);
+    let diagnostics = model.told();
+    let ok = diagnostics.iter().all(|d| d.severity != Severity::Error);
+    let name = model.name(&arguments.file);
+    let document = Derive { schema: "loopwright.derive.1", model: name, ok, diagnostics, transfers, characteristic };
+    let json = arguments.output.format == Format::Json;
+    if !json && document.transfers.is_empty() && document.characteristic.is_empty() {
+        // Nothing to be written: a file that is there keeps what it has.
+        return Ok(());
+    }
+    let mut out = Destination::open(arguments.output.output.as_deref())?;
+    if json {
+        report::json(&document, &mut out)?;
+    } else {
+        report::derive(&document, text_options(arguments.fraction, looks), &mut out)?;
+    }
+    Ok(out.finish()?)
+}
+
+/// `mason`: one request, worked out.
+pub(super) fn mason(arguments: &arguments::Mason, looks: Looks, status: &mut u8) -> Result<(), Failure> {
+    let line = command_line(&arguments.values, vec![arguments.request.clone()]);
+    let mut model = Model::read(&arguments.file, &line);
+    let mut document = None;
+    if let Some(netlist) = model.sound() {
+        let single = |kind: &RequestKind| !matches!(kind, RequestKind::All | RequestKind::Zeros { .. });
+        match netlist.requests.as_slice() {
+            [request] if single(&request.kind) => match flow::mason(netlist, request) {
+                Ok(worked) => document = Some(worked),
+                Err(told) => model.add(told),
+            },
+            _ => return Err("mason works out one request, such as `y / r` or `loop at u`".to_owned().into()),
+        }
+    }
+    *status = model.status(*status);
+    model.tell(looks);
+    let diagnostics = model.told();
+    let ok = diagnostics.iter().all(|d| d.severity != Severity::Error);
+    let json = arguments.output.format == Format::Json;
+    let Some(mut document) = document else {
+        if json {
+            let mut out = Destination::open(arguments.output.output.as_deref())?;
+            let name = model.name(&arguments.file);
+            report::json(&report::nothing("loopwright.mason.1", name, diagnostics), &mut out)?;
+            out.finish()?;
+        }
+        return Ok(());
+    };
+    (document.ok, document.diagnostics) = (ok, diagnostics);
+    let mut out = Destination::open(arguments.output.output.as_deref())?;
+    if json {
+        report::json(&document, &mut out)?;
+    } else {
+        report::mason(&document, text_options(arguments.fraction, looks), &mut out)?;
+    }
+    Ok(out.finish()?)
+}
