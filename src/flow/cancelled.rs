@@ -31,7 +31,11 @@ pub(super) fn factors(
 
 /// What `whole` has more than the denominator of `fraction`, up to factors without s and dead times.
 pub(super) fn rest(whole: &Poly, fraction: &Fraction) -> Option<Poly> {
-    primitive(whole).div_exact(&primitive(fraction.denominator()))
+    // The quotient is small where both are large; only a matrix law leaves factors without s that don't divide.
+    match whole.div_exact(fraction.denominator()) {
+        Some(quotient) => Some(primitive(&quotient)),
+        None => primitive(whole).div_exact(&primitive(fraction.denominator())),
+    }
 }
 
 /// The factors of a polynomial that change with s, but for pure dead times exp(-T·s), which have no roots; the laws of a
@@ -60,14 +64,13 @@ pub(super) fn split(wiring: &Wiring<'_>, laws: &Laws<'_>, part: &Part, p: &Poly)
 
 /// The polynomial without the factors that do not change with s, its leading coefficient positive.
 pub(super) fn primitive(p: &Poly) -> Poly {
-    let mut groups = std::collections::BTreeMap::<Vec<(Var, u32)>, Vec<_>>::new();
-    for (powers, c) in p.terms() {
-        let (key, rest): (Vec<_>, Vec<_>) = powers.into_iter().partition(|(v, _)| is_dynamic(*v));
-        groups.entry(key).or_default().push((rest, c));
+    let mut groups = vec![p.clone()];
+    for var in p.variables().into_iter().filter(|&v| is_dynamic(v)) {
+        groups = groups.iter().flat_map(|g| g.powers(var)).map(|(_, c)| c).collect();
     }
     let mut content = Poly::zero();
-    for terms in groups.into_values() {
-        content = content.gcd(&Poly::from_terms(terms));
+    for group in groups {
+        content = content.gcd(&group);
         if content.is_one() {
             break;
         }

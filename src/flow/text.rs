@@ -3,6 +3,7 @@
 use crate::algebra::{Fraction, IBig, Poly, RBig, Var, decimal};
 use crate::netlist::values::{PARAMS, Values};
 use dashu_base::{Abs, Sign, Signed};
+use std::fmt::Write;
 
 /// Names of variables, looked up without an allocation: long symbolic results name some variable a hundred million
 /// times.
@@ -37,37 +38,59 @@ impl Names {
     }
 }
 
-/// Appends a term to a sum: its sign, its coefficient (without sign) and its powers.
-fn push_term(out: &mut String, names: &Names, negative: bool, coefficient: &str, powers: &[(Var, u32)]) {
+/// Appends a term to a sum: its sign, its coefficient (without sign) and its powers by name.
+fn push_term<'a>(
+    out: &mut String,
+    negative: bool,
+    coefficient: &str,
+    powers: impl IntoIterator<Item = (&'a str, u64)>,
+) {
     out.push_str(match (out.is_empty(), negative) {
         (true, true) => "-",
         (true, false) => "",
         (false, true) => " - ",
         (false, false) => " + ",
     });
-    let mut first = true;
-    if powers.is_empty() || coefficient != "1" {
+    let start = out.len();
+    if coefficient != "1" {
         out.push_str(coefficient);
-        first = false;
     }
-    for &(var, power) in powers {
-        if !std::mem::replace(&mut first, false) {
+    for (name, power) in powers {
+        if out.len() > start {
             out.push('*');
         }
-        out.push_str(names.get(var));
+        out.push_str(name);
         if power > 1 {
             out.push('^');
             out.push_str(&power.to_string());
         }
     }
+    if out.len() == start {
+        out.push_str(coefficient);
+    }
+}
+
+/// The powers of one term by name.
+fn named<'a>(names: &'a Names, powers: &'a [(Var, u32)]) -> impl Iterator<Item = (&'a str, u64)> {
+    powers.iter().map(|&(var, power)| (names.get(var), u64::from(power)))
 }
 
 /// A polynomial, its terms in descending lexicographic order of exponents.
+///
+/// Works on the packed terms: what is written may be hundreds of megabytes.
 pub(crate) fn poly(names: &Names, p: &Poly) -> String {
+    let fields: Vec<_> = p.fields().iter().map(|f| (f, names.get(f.var))).collect();
     let mut out = String::new();
-    for (powers, c) in p.terms() {
+    let mut digits = String::new();
+    for i in 0..p.len() {
+        let (key, c) = (p.key(i), p.values().get(i));
         let negative = c.sign() == Sign::Negative;
-        push_term(&mut out, names, negative, &c.abs().to_string(), &powers);
+        digits.clear();
+        if write!(digits, "{}", c.abs()).is_err() {
+            continue;
+        }
+        let powers = fields.iter().map(|(f, name)| (*name, f.get(key))).filter(|p| p.1 > 0);
+        push_term(&mut out, negative, &digits, powers);
     }
     if out.is_empty() { "0".to_owned() } else { out }
 }
@@ -106,7 +129,7 @@ pub(crate) fn monic(names: &Names, p: &Poly) -> String {
         for (mut powers, c) in p.terms() {
             let c = RBig::from_parts_signed(c, lead.clone());
             symbols_first(&mut powers);
-            push_term(&mut out, names, c.is_negative(), &ratio(&c.clone().abs()), &powers);
+            push_term(&mut out, c.is_negative(), &ratio(&c.clone().abs()), named(names, &powers));
         }
         return out;
     }
@@ -118,7 +141,7 @@ pub(crate) fn monic(names: &Names, p: &Poly) -> String {
             text = format!("({text})");
         }
         let powers = if power == 0 { Vec::new() } else { vec![(Var::S, power as u32)] };
-        push_term(&mut out, names, negative, &text, &powers);
+        push_term(&mut out, negative, &text, named(names, &powers));
     }
     out
 }
@@ -131,7 +154,7 @@ pub(crate) fn fraction_decimal(names: &Names, f: &Fraction) -> String {
         for (powers, c) in p.terms() {
             let c = RBig::from_parts_signed(c, lead.clone());
             let negative = c.is_negative();
-            push_term(&mut out, names, negative, &decimal::text(&c.abs()), &powers);
+            push_term(&mut out, negative, &decimal::text(&c.abs()), named(names, &powers));
         }
         if out.is_empty() { "0".to_owned() } else { out }
     };
@@ -150,7 +173,7 @@ pub(crate) fn monic_decimal(names: &Names, p: &Poly) -> String {
     for (powers, c) in p.terms() {
         let c = RBig::from_parts_signed(c, lead.clone());
         let negative = c.is_negative();
-        push_term(&mut out, names, negative, &decimal::text(&c.abs()), &powers);
+        push_term(&mut out, negative, &decimal::text(&c.abs()), named(names, &powers));
     }
     out
 }
