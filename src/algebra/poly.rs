@@ -172,6 +172,13 @@ impl Poly {
     pub(crate) fn fields(&self) -> &[Field] {
         &self.fields
     }
+    /// The coefficient of term `i` where all fit in 64 bits.
+    pub(crate) fn small(&self, i: usize) -> Option<i64> {
+        match &self.coefficients {
+            Coefficients::Small(c) => c.get(i).copied(),
+            Coefficients::Big(_) => None,
+        }
+    }
     /// All packed exponents.
     pub(crate) fn keys(&self) -> &[u64] {
         &self.keys

@@ -15,6 +15,7 @@ use crate::netlist::values::PARAMS;
 use crate::netlist::{CaseId, Clauses, Keep, Request, RequestKind};
 use crate::results::{Characteristic, Form, HiddenFactor, Transfer, TransferKind};
 use crate::source::Span;
+use std::sync::Arc;
 
 /// The characteristic polynomial of every row of a netlist, primitive in s, and whether a value was rounded.
 ///
@@ -115,6 +116,7 @@ fn one(
     let factors = cancelled::split(&run.wiring, laws, &part, &polynomial);
     let words = cancelled::told(laws, &factors, rounded);
     let names = Names::of(&laws.values, [&polynomial]);
+    let polynomial = Arc::new(polynomial);
     let mut hidden = Vec::new();
     for (f, times) in &factors {
         let lacks = |t: &&&Transfer| shown_by(t).is_some_and(|p| multiplicity(f, &p) < *times);
@@ -132,7 +134,7 @@ fn one(
         polynomial: (!rounded).then(|| transfer::exact_terms(&laws.values, &polynomial)),
         factors: words,
         hidden,
-        form: Some(Form { numerator: Poly::one(), denominator: polynomial, names: names.table() }),
+        form: Some(Form { numerator: Arc::new(Poly::one()), denominator: polynomial, names: names.table() }),
     }
 }
 

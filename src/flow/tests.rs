@@ -162,8 +162,8 @@ impl Net {
 }
 
 /// `600 s^1 + 2400` as text, one term after the other, with dead times after `@`.
-fn terms(terms: Option<&Vec<crate::results::ExactTerm>>) -> String {
-    let told = |t: &crate::results::ExactTerm| {
+fn terms(terms: Option<&crate::results::Terms>) -> String {
+    let told = |t: crate::results::ExactTerm| {
         let delay = if t.delay == "0" { String::new() } else { format!("@{}", t.delay) };
         format!("({})s^{}{delay}", t.coefficient, t.power)
     };
@@ -518,8 +518,8 @@ fn three_ways_agree_on_random_netlists() {
         let s = Complex::new(0.37, 1.9);
         let (a, b) = numeric(&laws, &sums, s);
         let Some(direct) = a.lu().solve(&b).map(|x| x[0]) else { continue };
-        let side = |terms: Option<&Vec<crate::results::ExactTerm>>| {
-            terms.into_iter().flatten().fold(Complex::new(0.0, 0.0), |sum, t| {
+        let side = |terms: Option<&crate::results::Terms>| {
+            terms.into_iter().flat_map(|t| t.iter()).fold(Complex::new(0.0, 0.0), |sum, t| {
                 sum + s.powu(t.power) * Complex::new(t.coefficient.parse::<f64>().expect("a number"), 0.0)
             })
         };

@@ -5,8 +5,9 @@ use crate::algebra::roots::RootOf;
 use crate::algebra::{Fraction, IBig, Poly, RBig, Var, decimal, functions};
 use crate::netlist::TimeBase;
 use crate::netlist::values::{DELAYS, PARAMS, PI, Values};
-use crate::results::{Decimal, ExactTerm, Form, Root, Transfer, TransferKind};
+use crate::results::{Decimal, Form, Root, Terms, Transfer, TransferKind};
 use dashu_base::Sign;
+use std::sync::Arc;
 
 /// Above this degree poles and zeros are found only on request: they cost more than the transfer function itself.
 pub const MAX_ROOTS_DEGREE: u32 = 128;
@@ -78,18 +79,24 @@ fn sorted_terms(values: &Values<'_>, p: &Poly) -> Vec<(Vec<(Var, u32)>, u32, Pol
 }
 
 /// Terms of a polynomial as JSON has them.
-pub(crate) fn exact_terms(values: &Values<'_>, p: &Poly) -> Vec<ExactTerm> {
-    let names = Names::of(values, [p]);
-    let mut last: Option<(Vec<(Var, u32)>, String)> = None;
-    let term = |(delays, power, c): (Vec<(Var, u32)>, u32, Poly)| {
-        if last.as_ref().is_none_or(|l| l.0 != delays) {
-            last = Some((delays.clone(), delay_text(values, &delays)));
-        }
-        let delay = last.as_ref().map_or_else(String::new, |l| l.1.clone());
-        ExactTerm { power, delay, coefficient: text::poly(&names, &c) }
-    };
-    sorted_terms(values, p).into_iter().map(term).collect()
+pub(crate) fn exact_terms(values: &Values<'_>, p: &Arc<Poly>) -> Terms {
+    let names = Names::of(values, [&**p]).table();
+    let mut known: Vec<(Vec<(Var, u32)>, DelayKey, String)> = Vec::new();
+    Terms::new(p.clone(), names.into(), is_delay, |delays| {
+        let at = known.iter().position(|k| k.0 == delays).unwrap_or_else(|| {
+            let total = delays
+                .iter()
+                .try_fold(RBig::ZERO, |t, &(v, e)| delay_in_seconds(values, v).map(|d| t + d * RBig::from(e)));
+            let key = (total.is_none(), total.unwrap_or(RBig::ZERO), delays.to_vec());
+            known.push((delays.to_vec(), key, delay_text(values, delays)));
+            known.len() - 1
+        });
+        (known[at].1.clone(), known[at].2.clone())
+    })
 }
+
+/// The order of dead times: numbers by size, then those with symbols.
+type DelayKey = (bool, RBig, Vec<(Var, u32)>);
 
 /// The dead time of a product of dead-time variables: `0`, `7/2`, `2*T`.
 fn delay_text(values: &Values<'_>, delays: &[(Var, u32)]) -> String {
@@ -130,7 +137,8 @@ pub(crate) fn result(
     all_roots: bool,
 ) -> Transfer {
     let (numerator, denominator) = with_sign(values, fraction);
-    let names = Names::of(values, [&numerator, &denominator]);
+    let (numerator, denominator) = (Arc::new(numerator), Arc::new(denominator));
+    let names = Names::of(values, [&*numerator, &*denominator]);
     let result = Transfer {
         kind: head.kind,
         to: head.to,

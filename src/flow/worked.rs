@@ -15,6 +15,7 @@ use crate::netlist::values::PARAMS;
 use crate::netlist::{Asked, Driver, Law, Netlist, Request, RequestKind, SignalId};
 use crate::results::Form;
 use crate::results::mason::{Mason, MasonBranch, MasonGain, MasonGroup, MasonLoop, MasonPath, MasonResult};
+use std::sync::Arc;
 
 /// Works the rule out for one request: a transfer function, or the return ratio at one signal.
 ///
@@ -229,7 +230,8 @@ impl Teller<'_, '_> {
         };
         let gain = if ratio { gain.neg() } else { gain.clone() };
         let (n, d) = transfer::with_sign(&self.laws.values, &gain);
-        let names = Names::of(&self.laws.values, [&n, &d]);
+        let (n, d) = (Arc::new(n), Arc::new(d));
+        let names = Names::of(&self.laws.values, [&*n, &*d]);
         let exact = !self.graph.rounded;
         MasonResult {
             names: format!("{}{above}/D", if ratio { "-" } else { "" }),

@@ -5,6 +5,7 @@
 
 use super::number::{self, superscript};
 use crate::algebra::{IBig, Poly, RBig, UBig, Var};
+use crate::results::Monomials;
 use dashu_base::UnsignedAbs as _;
 use std::collections::BTreeMap;
 
@@ -56,6 +57,19 @@ impl<'a> Words<'a> {
         self.push("·");
         if self.current.chars().count() > LONGEST_WORD {
             self.end(Joint::Tight);
+        }
+    }
+
+    /// Breaks a long word after some of its dots.
+    fn break_long(&mut self) {
+        while self.current.len() > 2 * LONGEST_WORD {
+            let Some((at, dot)) = self.current.match_indices('·').take_while(|(at, _)| *at <= LONGEST_WORD).last()
+            else {
+                return;
+            };
+            let rest = self.current.split_off(at + dot.len());
+            self.end(Joint::Tight);
+            self.current = rest;
         }
     }
 
@@ -150,7 +164,7 @@ impl Naming<'_> {
             return;
         }
         if !p.variables().into_iter().any(|v| self.is_delay(v)) {
-            return self.collected(out, p.terms(), scale, true);
+            return self.collected(out, p, scale, false);
         }
         let mut groups: BTreeMap<Monomial, Vec<(Monomial, IBig)>> = BTreeMap::new();
         for (monomial, c) in p.terms() {
@@ -159,12 +173,19 @@ impl Naming<'_> {
         }
         let mut first = true;
         for (delays, terms) in groups {
+            let group = Poly::from_terms(terms);
             if delays.is_empty() {
-                self.collected(out, terms, scale, true);
+                self.collected(out, &group, scale, false);
             } else {
-                let negative = terms.first().is_some_and(|t| is_negative(&t.1));
+                let negative = group.leading_coefficient() < IBig::ZERO;
                 sign(out, negative, first);
-                self.group(out, terms, scale, negative);
+                if group.len() > 1 {
+                    out.push("(");
+                    self.collected(out, &group, scale, negative);
+                    out.push(")");
+                } else {
+                    self.product(out, &Packed::new(&group, self), 0, scale, false);
+                }
                 for (v, e) in delays {
                     if out.in_product() {
                         out.dot();
@@ -176,48 +197,28 @@ impl Naming<'_> {
         }
     }
 
-    /// A dead time's factor: its terms in parentheses, or its only term; nothing for 1.
-    fn group(&self, out: &mut Words<'_>, terms: Vec<(Monomial, IBig)>, scale: &Scale, flipped: bool) {
-        if let [(monomial, c)] = terms.as_slice() {
-            self.product(out, monomial, c, scale, false);
-            return;
-        }
-        out.push("(");
-        let flip = |c: IBig| if flipped { -c } else { c };
-        self.collected(out, terms.into_iter().map(|(m, c)| (m, flip(c))), scale, true);
-        out.push(")");
-    }
-
     /// Terms in descending powers of the variable: those of one power are put in parentheses where there are several.
-    fn collected(
-        &self,
-        out: &mut Words<'_>,
-        terms: impl IntoIterator<Item = (Monomial, IBig)>,
-        scale: &Scale,
-        mut first: bool,
-    ) {
-        let mut terms = terms.into_iter().peekable();
-        while let Some((monomial, c)) = terms.next() {
-            if out.stopped() {
-                return;
-            }
-            let power = main_power(&monomial);
-            let negative = is_negative(&c);
-            let alone = power == 0 || terms.peek().is_none_or(|t| main_power(&t.0) != power);
-            sign(out, negative, first);
-            first = false;
+    /// With `flipped`, all signs are turned.
+    fn collected(&self, out: &mut Words<'_>, p: &Poly, scale: &Scale, flipped: bool) {
+        let packed = Packed::new(p, self);
+        let mut i = 0;
+        while i < p.len() && !out.stopped() {
+            let power = packed.power(i);
+            let negative = packed.monomials.is_negative(i) != flipped;
+            sign(out, negative, i == 0);
+            let alone = power == 0 || i + 1 == p.len() || packed.power(i + 1) != power;
             if alone {
-                self.product(out, &monomial, &c, scale, true);
+                self.product(out, &packed, i, scale, true);
+                i += 1;
                 continue;
             }
             out.push("(");
-            self.product(out, without_main(&monomial), &c, scale, true);
-            while let Some((m, c)) = terms.next_if(|t| main_power(&t.0) == power) {
-                if out.stopped() {
-                    return;
-                }
-                sign(out, is_negative(&c) != negative, false);
-                self.product(out, without_main(&m), &c, scale, true);
+            self.factor_of_power(out, &packed, i, scale);
+            i += 1;
+            while i < p.len() && packed.power(i) == power && !out.stopped() {
+                sign(out, (packed.monomials.is_negative(i) != flipped) != negative, false);
+                self.factor_of_power(out, &packed, i, scale);
+                i += 1;
             }
             out.push(")");
             out.dot();
@@ -225,35 +226,83 @@ impl Naming<'_> {
         }
     }
 
-    /// One term without its sign; 1 is told only where asked for.
-    fn product(&self, out: &mut Words<'_>, monomial: &[(Var, u32)], c: &IBig, scale: &Scale, one: bool) {
-        let mut any = false;
-        let power = main_power(monomial);
-        if let Some(text) = scale.tell(c) {
-            out.push(&text);
-            any = true;
+    /// One term without its sign and its power of the variable.
+    fn factor_of_power(&self, out: &mut Words<'_>, packed: &Packed<'_>, i: usize, scale: &Scale) {
+        let any = tell_coefficient(out, packed, i, scale);
+        if any {
+            out.push("·");
         }
+        if packed.monomials.push(&mut out.current, i) {
+            out.break_long();
+        } else if any {
+            out.current.truncate(out.current.len() - "·".len());
+        } else {
+            out.push("1");
+        }
+    }
+
+    /// One term without its sign; 1 is told only where asked for.
+    fn product(&self, out: &mut Words<'_>, packed: &Packed<'_>, i: usize, scale: &Scale, one: bool) {
+        let power = packed.power(i);
+        let mut any = tell_coefficient(out, packed, i, scale);
         if self.seconds && power > 0 && any {
             out.push(&if power == 1 { " [s]".to_owned() } else { format!(" [s{}]", superscript(power)) });
         }
-        for &(v, e) in without_main(monomial) {
-            if any {
-                out.dot();
-            }
-            self.power(out, v, e);
+        if any {
+            out.push("·");
+        }
+        if packed.monomials.push(&mut out.current, i) {
             any = true;
+            out.break_long();
+        } else if any {
+            out.current.truncate(out.current.len() - "·".len());
         }
         if power > 0 {
             if any {
                 out.dot();
             }
             self.power(out, Var::S, power);
-            any = true;
-        }
-        if !any && one {
+        } else if !any && one {
             out.push("1");
         }
     }
+}
+
+/// A polynomial with the text of its products.
+struct Packed<'p> {
+    poly: &'p Poly,
+    monomials: Monomials<'p>,
+    degree: bool,
+}
+
+impl<'p> Packed<'p> {
+    fn new(poly: &'p Poly, naming: &Naming<'_>) -> Self {
+        let name = |v: Var| (v != Var::S).then(|| naming.name(v));
+        let monomials = Monomials::new(poly, name, "·", |out, name, exponent| {
+            out.push_str(name);
+            if exponent > 1 {
+                out.push_str(&superscript(exponent as u32));
+            }
+        });
+        Self { poly, monomials, degree: poly.degree(Var::S) > 0 }
+    }
+
+    /// The power of s or z in term `i`: it stands first in every monomial.
+    fn power(&self, i: usize) -> u32 {
+        if !self.degree {
+            return 0;
+        }
+        self.poly.fields().first().map_or(0, |f| f.get(self.poly.key(i)) as u32)
+    }
+}
+
+/// A term's coefficient without its sign; nothing for 1.
+fn tell_coefficient(out: &mut Words<'_>, packed: &Packed<'_>, i: usize, scale: &Scale) -> bool {
+    if *scale == Scale::Whole && matches!(packed.poly.small(i), Some(1 | -1)) {
+        return false;
+    }
+    let told = scale.tell(&packed.poly.values().get(i));
+    told.inspect(|text| out.push(text)).is_some()
 }
 
 /// The sign before a term, and the end of the word before it.
@@ -266,19 +315,6 @@ fn sign(out: &mut Words<'_>, negative: bool, first: bool) {
         out.end(Joint::Space);
         out.push(if negative { "- " } else { "+ " });
     }
-}
-
-fn is_negative(c: &IBig) -> bool {
-    *c < IBig::ZERO
-}
-
-/// The power of s or z: it stands first in every monomial.
-fn main_power(monomial: &[(Var, u32)]) -> u32 {
-    monomial.first().filter(|p| p.0 == Var::S).map_or(0, |p| p.1)
-}
-
-fn without_main(monomial: &[(Var, u32)]) -> &[(Var, u32)] {
-    if main_power(monomial) > 0 { &monomial[1..] } else { monomial }
 }
 
 /// A dead time as often as its exponent says: `exp(-0.2·s)` for the second power of `exp(-(1/10)*s)`.

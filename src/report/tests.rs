@@ -4,6 +4,7 @@ use super::*;
 use crate::algebra::{IBig, Poly, Var};
 use crate::results::mason::{Mason, MasonBranch, MasonGain, MasonGroup, MasonLoop, MasonPath, MasonResult};
 use crate::results::{Decimal, Derive, Form, Root, Transfer, TransferKind};
+use std::sync::Arc;
 
 const S: Var = Var::S;
 const DELAY: Var = Var(1);
@@ -44,7 +45,11 @@ fn transfer(numerator: Poly, denominator: Poly) -> Transfer {
         converges_outside: None,
         stable: None,
         verified: None,
-        form: Some(Form { numerator, denominator, names: names.map(|(v, n)| (v, n.to_owned())).to_vec() }),
+        form: Some(Form {
+            numerator: Arc::new(numerator),
+            denominator: Arc::new(denominator),
+            names: names.map(|(v, n)| (v, n.to_owned())).to_vec(),
+        }),
     }
 }
 
@@ -382,7 +387,11 @@ fn two_loops() -> Mason {
             expression: "23/(86*s + 43)".into(),
             numerator: None,
             denominator: None,
-            form: Some(Form { numerator: dense(&[23]), denominator: dense(&[86, 43]), names: vec![] }),
+            form: Some(Form {
+                numerator: Arc::new(dense(&[23])),
+                denominator: Arc::new(dense(&[86, 43])),
+                names: vec![],
+            }),
         },
     }
 }

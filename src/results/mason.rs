@@ -3,7 +3,7 @@
 //! Everything is told twice: by names, so that a reviewer can follow on the diagram (`C*G`, `1 - L1 - L2 + L1*L2`), and
 //! as an exact expression beside it (`10/(s + 2)`). Numbers in names count from 1, in the order of the lists.
 
-use super::{ExactTerm, Form, ToldDiagnostic};
+use super::{Form, Terms, ToldDiagnostic};
 use schemars::JsonSchema;
 use serde::Serialize;
 
@@ -123,9 +123,9 @@ pub struct MasonResult {
     /// As one expression.
     pub expression: String,
     /// Terms of the numerator as in `derive`; null where a value was rounded.
-    pub numerator: Option<Vec<ExactTerm>>,
+    pub numerator: Option<Terms>,
     /// Terms of the denominator.
-    pub denominator: Option<Vec<ExactTerm>>,
+    pub denominator: Option<Terms>,
     /// The same in polynomials, for rendering.
     #[serde(skip)]
     #[schemars(skip)]

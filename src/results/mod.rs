@@ -1,11 +1,16 @@
 //! Results as plain data: made once, rendered many times. The JSON documents are these types, key by key.
 
 pub mod mason;
+mod terms;
+
+pub(crate) use terms::Monomials;
+pub use terms::Terms;
 
 use crate::algebra::Poly;
 use crate::diagnostics::{Code, Severity};
 use schemars::JsonSchema;
 use serde::Serialize;
+use std::sync::Arc;
 
 /// A diagnostic as JSON tells it.
 #[derive(Clone, Debug, PartialEq, Serialize, JsonSchema)]
@@ -78,7 +83,7 @@ pub struct Characteristic {
     /// Whether it is exact.
     pub exact: bool,
     /// Its terms, ordered as those of a denominator; null where a value was rounded.
-    pub polynomial: Option<Vec<ExactTerm>>,
+    pub polynomial: Option<Terms>,
     /// Its monic factors, each as often as its multiplicity.
     pub factors: Vec<String>,
     /// Each factor that some transfer function of this document does not show, with the requests that it is hidden from.
@@ -176,9 +181,9 @@ pub struct Transfer {
     /// Whether numerator and denominator are exact.
     pub exact: bool,
     /// Terms of the numerator, by delay up, then power down.
-    pub numerator: Option<Vec<ExactTerm>>,
+    pub numerator: Option<Terms>,
     /// Terms of the denominator.
-    pub denominator: Option<Vec<ExactTerm>>,
+    pub denominator: Option<Terms>,
     /// Coefficients in decimals where there is no delay and no kept symbol.
     pub decimal: Option<Decimal>,
     /// Factors that were cancelled, monic, each as often as its multiplicity.
@@ -210,9 +215,9 @@ pub struct Transfer {
 #[derive(Clone, Debug)]
 pub struct Form {
     /// Numerator.
-    pub numerator: Poly,
+    pub numerator: Arc<Poly>,
     /// Denominator.
-    pub denominator: Poly,
+    pub denominator: Arc<Poly>,
     /// Variables with their names: params, π, dead times (`exp(-0.1*s)`).
     pub names: Vec<(crate::algebra::Var, String)>,
 }
