@@ -5,7 +5,7 @@ use super::direct::{self, Lead, Leads};
 use super::graph::Wiring;
 use super::improper::{self, Improper};
 use super::rows::Laws;
-use super::{hidden, loops, rates, tangles, unused};
+use super::{hidden, loops, named, rates, tangles, unused};
 use crate::diagnostics::Diagnostic;
 use crate::netlist::expr::ExprId;
 use crate::netlist::{Keep, Law, Netlist};
@@ -34,7 +34,7 @@ pub(super) fn check(netlist: &Netlist) -> Vec<Diagnostic> {
     let wiring = Wiring::new(netlist);
     let mut leads = Leads::new(netlist, None, &Keep::Nothing);
     let mut late = Late { cases: Cases::new(netlist), diagnostics: Vec::new() };
-    let improper = laws(netlist, &mut leads, &mut late);
+    let improper = laws(&wiring, &mut leads, &mut late);
     let sound = late.diagnostics.is_empty();
     if let Some(diagnostic) = rates::mixed(netlist) {
         late.tell(diagnostic);
@@ -51,7 +51,7 @@ pub(super) fn check(netlist: &Netlist) -> Vec<Diagnostic> {
     let known = if sound && !improper.is_empty() { late.laws() } else { None };
     late.diagnostics.extend(improper::tell(&wiring, known.as_deref(), &improper));
     late.diagnostics.extend(unused::blocks(&wiring));
-    let small = netlist.signals.len() <= 4 * super::named::MAX_ROWS;
+    let small = netlist.signals.len() <= 4 * named::MAX_ROWS;
     if sound && small && !late.diagnostics.iter().any(Diagnostic::is_error) {
         if let Some(laws) = late.laws() {
             late.diagnostics.extend(hidden::modes(&wiring, &laws));
@@ -62,7 +62,8 @@ pub(super) fn check(netlist: &Netlist) -> Vec<Diagnostic> {
 
 /// Looks at every law, coefficient and factor: tells those that have no value, and gives the blocks whose law is
 /// improper.
-fn laws<'n>(netlist: &'n Netlist, leads: &mut Leads<'n>, late: &mut Late<'n>) -> Vec<Improper<'n>> {
+fn laws<'n>(wiring: &Wiring<'n>, leads: &mut Leads<'n>, late: &mut Late<'n>) -> Vec<Improper<'n>> {
+    let netlist = wiring.netlist;
     let mut found = Vec::new();
     for term in &netlist.terms {
         if let Some(factor) = term.factor {
@@ -82,7 +83,11 @@ fn laws<'n>(netlist: &'n Netlist, leads: &mut Leads<'n>, late: &mut Late<'n>) ->
             Law::Scalar(law) => entry(*law, leads, late),
             Law::Matrix(rows) => rows.iter().flat_map(|r| r.iter()).for_each(|&law| entry(law, leads, late)),
             Law::States(equations) => {
-                equations.iter().flat_map(|e| e.terms.iter()).for_each(|t| entry(t.coefficient, leads, late));
+                let terms = || equations.iter().flat_map(|e| e.terms.iter());
+                terms().for_each(|t| entry(t.coefficient, leads, late));
+                if terms().any(|t| t.derivative) && equations.len() <= named::MAX_ROWS {
+                    worst = late.laws().and_then(|laws| improper::of_states(wiring, &laws, block, equations));
+                }
             }
         }
         found.extend(worst.map(|(above, below)| Improper { block, above, below }));

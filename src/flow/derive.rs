@@ -12,6 +12,7 @@ use crate::algebra::{Fraction, Poly};
 use crate::diagnostics::{Code, Diagnostic};
 use crate::netlist::{Asked, CaseId, Netlist, Request, RequestKind};
 use crate::results::{Transfer, TransferKind};
+use std::rc::Rc;
 
 /// What all requests of one run have in common.
 pub(super) struct Run<'n> {
@@ -19,6 +20,8 @@ pub(super) struct Run<'n> {
     pub(super) options: DeriveOptions,
     pub(super) sampled: bool,
     pub(super) diagnostics: Vec<Diagnostic>,
+    /// The values for which loops of the whole netlist were looked at.
+    looked_at: Vec<Rc<Laws<'n>>>,
 }
 
 /// One entry of the list of results: a transfer function by its ends, or a return ratio, or zeros.
@@ -37,13 +40,20 @@ pub(super) fn derive(netlist: &Netlist, options: &DeriveOptions) -> Derived {
         return out;
     }
     let sampled = transfer::is_sampled(netlist.time_base);
-    let mut run = Run { wiring: Wiring::new(netlist), options: *options, sampled, diagnostics: Vec::new() };
+    let mut run = Run {
+        wiring: Wiring::new(netlist),
+        options: *options,
+        sampled,
+        diagnostics: Vec::new(),
+        looked_at: Vec::new(),
+    };
     let mut cases = Cases::new(netlist);
     for request in &netlist.requests {
         let asked = cases::of(netlist, &request.clauses.cases, request.span, &mut run.diagnostics);
         for item in items(netlist, &request.kind) {
             for &case in &asked {
                 let Some(laws) = cases.laws(case, &request.clauses.keep, &mut run.diagnostics) else { continue };
+                run.whole_netlist(&laws);
                 out.transfers.extend(run.item(&laws, request, &item, case));
             }
         }
@@ -93,6 +103,18 @@ pub(super) struct Reduced {
 }
 
 impl<'n> Run<'n> {
+    /// Tells every loop of the netlist that has no solution with these values, whether or not a request touches it.
+    fn whole_netlist(&mut self, laws: &Rc<Laws<'n>>) {
+        if self.looked_at.iter().any(|l| Rc::ptr_eq(l, laws)) {
+            return;
+        }
+        self.looked_at.push(Rc::clone(laws));
+        match ill_posed::all(&self.wiring, laws) {
+            Ok(found) => found.into_iter().for_each(|d| self.tell(d)),
+            Err(diagnostic) => self.tell(*diagnostic),
+        }
+    }
+
     /// Answers one item for one case; what can't be answered is told instead.
     fn item(&mut self, laws: &Laws<'n>, request: &Request, item: &Item, case: Option<CaseId>) -> Option<Transfer> {
         let head = self.head(laws, request, item, case);

@@ -13,6 +13,21 @@ use crate::netlist::SignalId;
 use petgraph::algo::kosaraju_scc;
 use petgraph::graph::{DiGraph, NodeIndex};
 
+/// Every algebraic loop of a netlist without a solution, no signal cut.
+///
+/// # Errors
+///
+/// What the laws say when they are worked out.
+pub(super) fn all<'n>(wiring: &Wiring<'n>, laws: &Laws<'n>) -> Result<Vec<Diagnostic>, Box<Diagnostic>> {
+    let mut out = Vec::new();
+    for set in laws.candidates(wiring) {
+        let found = tangles::tangles(wiring, laws, set, &[])?;
+        let none = found.iter().filter(|t| t.solvable == Solvable::No);
+        out.extend(none.map(|tangle| super::loops::tell(wiring, laws, tangle)));
+    }
+    Ok(out)
+}
+
 /// The first algebraic loop without a solution among those that a signal depends on, whether or not the test signal
 /// reaches it: the signal has no value then.
 ///

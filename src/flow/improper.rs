@@ -3,9 +3,10 @@
 use super::graph::Wiring;
 use super::named;
 use super::rows::Laws;
+use super::system::{self, Part};
 use crate::algebra::{Fraction, Var};
 use crate::diagnostics::{Code, Diagnostic, Severity};
-use crate::netlist::{Block, Netlist, TimeBase};
+use crate::netlist::{Block, Equation, Netlist, SignalId, TimeBase};
 
 /// A block with such a law, and the degrees of the worst of its entries.
 #[derive(Clone, Copy, Debug)]
@@ -19,6 +20,33 @@ pub(super) struct Improper<'n> {
 pub(super) fn degrees(f: &Fraction) -> Option<(u32, u32)> {
     let (above, below) = (f.numerator().degree(Var::S), f.denominator().degree(Var::S));
     (above > below).then_some((above, below))
+}
+
+/// The degrees of the worst entry of a block with state equations that is improper. Only a derivative on the right of a
+/// line can make one so.
+pub(super) fn of_states(
+    wiring: &Wiring<'_>,
+    laws: &Laws<'_>,
+    block: &Block,
+    equations: &[Equation],
+) -> Option<(u32, u32)> {
+    let mut rows: Vec<SignalId> = equations.iter().map(|e| e.left).collect();
+    rows.sort_unstable();
+    rows.dedup();
+    let part = Part::of(rows);
+    let mut worst: Option<(u32, u32)> = None;
+    for &input in &block.inputs {
+        let equations = system::equations(wiring, laws, &part, Some(input), &[]).ok()?;
+        let wanted: Vec<usize> = block.outputs.iter().filter_map(|&y| part.place(y)).collect();
+        let solution = equations.system.solve(&equations.right, &wanted).ok()?;
+        for numerator in solution.numerators {
+            let entry = Fraction::new(numerator, solution.determinant.clone())?;
+            if let Some((above, below)) = degrees(&entry) {
+                worst = worst.filter(|(a, b)| a - b >= above - below).or(Some((above, below)));
+            }
+        }
+    }
+    worst
 }
 
 /// Tells them: an error in z; in s a note while every transfer function and return ratio that is named is proper, and a

@@ -1,9 +1,13 @@
 //! Polynomials and fractions as the exact strings of results: `Kp*b + 3`, `10/(s + 2)`, `25/2`.
 
+use crate::algebra::factor::{Factored, factor};
 use crate::algebra::{Fraction, IBig, Poly, RBig, Var, decimal};
 use crate::netlist::values::{PARAMS, Values};
 use dashu_base::{Abs, Sign, Signed};
 use std::fmt::Write;
+
+/// Fractions of more terms than this are not factored for reading: nobody would read them.
+const MAX_FACTORED_TERMS: usize = 60;
 
 /// Names of variables, looked up without an allocation: long symbolic results name some variable a hundred million
 /// times.
@@ -95,6 +99,16 @@ pub(crate) fn poly(names: &Names, p: &Poly) -> String {
     if out.is_empty() { "0".to_owned() } else { out }
 }
 
+/// A polynomial as it is read: `K*s` rather than `s*K`.
+fn sum(names: &Names, p: &Poly) -> String {
+    let mut out = String::new();
+    for (mut powers, c) in p.terms() {
+        symbols_first(&mut powers);
+        push_term(&mut out, c.sign() == Sign::Negative, &c.abs().to_string(), named(names, &powers));
+    }
+    if out.is_empty() { "0".to_owned() } else { out }
+}
+
 /// A rational number: `600`, `25/2`.
 pub(crate) fn ratio(value: &RBig) -> String {
     if *value.denominator() == dashu_int::UBig::ONE {
@@ -104,19 +118,70 @@ pub(crate) fn ratio(value: &RBig) -> String {
     }
 }
 
-/// A fraction: `10/(s + 2)`, `s/T`, `3/2*K`.
+/// A fraction: `10/(s + 2)`, `s/T`, `(K + 1)/(2*T)`.
 pub(crate) fn fraction(names: &Names, f: &Fraction) -> String {
-    let below = f.denominator();
-    let above = poly(names, f.numerator());
-    if below.is_one() {
-        return above;
+    quotient(f, |p| Side { text: sum(names, p), terms: p.len(), factors: factors_in(p) })
+}
+
+/// A fraction in factors where it is small enough to be read: `6*K*(s + 1)/(2*s + 3)`.
+pub(crate) fn factored(names: &Names, f: &Fraction) -> String {
+    if f.numerator().len() + f.denominator().len() > MAX_FACTORED_TERMS {
+        return fraction(names, f);
     }
-    let above = if f.numerator().len() > 1 { format!("({above})") } else { above };
-    let single = below.len() == 1 && {
-        let (powers, c) = below.terms().next().unwrap_or_default();
-        powers.len() + usize::from(c != IBig::ONE) <= 1
-    };
-    if single { format!("{above}/{}", poly(names, below)) } else { format!("{above}/({})", poly(names, below)) }
+    quotient(f, |p| product(names, p))
+}
+
+/// What stands above or below in a quotient.
+struct Side {
+    text: String,
+    /// How many terms the text has outside parentheses.
+    terms: usize,
+    /// How many factors, where it is one term.
+    factors: usize,
+}
+
+fn quotient(f: &Fraction, side: impl Fn(&Poly) -> Side) -> String {
+    let above = side(f.numerator());
+    if f.denominator().is_one() {
+        return above.text;
+    }
+    let below = side(f.denominator());
+    let above = if above.terms > 1 { format!("({})", above.text) } else { above.text };
+    if below.terms == 1 && below.factors <= 1 {
+        format!("{above}/{}", below.text)
+    } else {
+        format!("{above}/({})", below.text)
+    }
+}
+
+/// How many factors a polynomial of one term has.
+fn factors_in(p: &Poly) -> usize {
+    p.terms().next().map_or(0, |(powers, c)| powers.len() + usize::from(c != IBig::ONE))
+}
+
+/// A polynomial as a product: its number, symbols, then sums in parentheses.
+fn product(names: &Names, p: &Poly) -> Side {
+    let Factored { unit, mut factors } = factor(p);
+    factors.sort_by_key(|(f, _)| f.len() > 1);
+    let number = unit.clone().abs();
+    let mut parts = Vec::new();
+    if number != IBig::ONE || factors.is_empty() {
+        parts.push(number.to_string());
+    }
+    let single = parts.is_empty() && factors.len() == 1 && factors[0].1 == 1;
+    for (f, power) in &factors {
+        let text = sum(names, f);
+        let text = if f.len() > 1 && !single { format!("({text})") } else { text };
+        parts.push(if *power > 1 { format!("{text}^{power}") } else { text });
+    }
+    let negative = unit.sign() == Sign::Negative;
+    // A sum alone takes its sign into its terms.
+    if single && negative {
+        return Side { text: sum(names, p), terms: p.len(), factors: 1 };
+    }
+    let terms = if single { factors[0].0.len() } else { 1 };
+    let text = parts.join("*");
+    Side { text: if negative { format!("-{text}") } else { text }, terms, factors: parts.len() }
 }
 
 /// A polynomial divided by its leading coefficient in the main variable: `s^2 + 2*s + 5`, `s + 1/T`,
@@ -209,6 +274,8 @@ mod tests {
         assert_eq!(fraction(&letters(), &f), "K/T");
         let f = Fraction::new(v(1).add(&c(1)), v(2).scale(&IBig::from(2))).unwrap_or_else(Fraction::one);
         assert_eq!(fraction(&letters(), &f), "(K + 1)/(2*T)");
+        let f = Fraction::new(v(1).mul(&v(0).add(&c(1))).scale(&IBig::from(-6)), v(0).add(&c(2)).pow(2));
+        assert_eq!(factored(&letters(), &f.unwrap_or_else(Fraction::one)), "-6*K*(s + 1)/(s + 2)^2");
     }
 
     #[test]

@@ -105,7 +105,7 @@ struct Teller<'t, 'n> {
 impl Teller<'_, '_> {
     fn expression(&self, f: &Fraction) -> String {
         let names = Names::of(&self.laws.values, [f.numerator(), f.denominator()]);
-        if self.graph.rounded { text::fraction_decimal(&names, f) } else { text::fraction(&names, f) }
+        if self.graph.rounded { text::fraction_decimal(&names, f) } else { text::factored(&names, f) }
     }
 
     fn signal(&self, node: usize) -> SignalId {
