@@ -76,6 +76,30 @@ fn check_says_one_quiet_line_or_tells_all_mistakes() {
 }
 
 #[test]
+fn a_mistake_in_a_file_that_two_use_is_told_once() {
+    let f = folder("shared");
+    write(&f, "part.loop", "define lag(T) = 1/(T*s + Kx)\n");
+    for name in ["a.loop", "b.loop"] {
+        write(&f, name, "use \"part.loop\"\ninput r\noutput y\nblock G : r -> y = lag(2)\nfind y / r\n");
+    }
+    let output = run(&f, &["check", "a.loop", "b.loop"]);
+    assert_eq!((status(&output), err(&output).matches("error: unknown-name").count()), (2, 1), "{}", err(&output));
+    let document = json(&run(&f, &["check", "a.loop", "b.loop", "--format", "json"]));
+    assert_eq!(document["diagnostics"].as_array().map(Vec::len), Some(1));
+}
+
+#[test]
+fn derive_tells_what_a_reader_of_results_has_to_know() {
+    let f = folder("warned");
+    let text = "input r\noutput y\nsum e = r - y\nblock C : e -> u = 2*(s - 1)/(s + 3)\nblock G : u -> y = 1/(s - 1)\n";
+    write(&f, "hidden.loop", format!("{text}find y / r\n"));
+    let output = run(&f, &["derive", "hidden.loop"]);
+    assert_eq!(status(&output), 0);
+    assert!(err(&output).contains("warning: hidden-unstable-mode"), "{}", err(&output));
+    assert!(out(&output).contains("cancelled"), "{}", out(&output));
+}
+
+#[test]
 fn derive_prints_the_fraction_and_json_is_the_same_each_time() {
     let f = folder("derive");
     write(&f, "servo.loop", GOOD);
@@ -169,7 +193,8 @@ fn output_goes_into_a_file_whole_or_not_at_all() {
 #[test]
 fn a_reader_that_goes_early_is_no_error() {
     let f = folder("pipe");
-    let blocks: String = (0..400).map(|k| format!("output y{k}\nblock G{k} : r -> y{k} = 1/(s + {k})\n")).collect();
+    let block = |k: i32| format!("output y{k}\nblock G{k} : r -> y{k} = 1/(s + {k})\n");
+    let blocks = (0..400).map(block).collect::<Vec<_>>().concat();
     write(&f, "many.loop", format!("input r\n{blocks}find all\n"));
     for format in ["text", "json"] {
         let mut child = program(&f, &["derive", "many.loop", "--format", format])
@@ -267,7 +292,7 @@ fn example<'a>(page: &'a str, kind: &str) -> &'a str {
 #[test]
 fn each_code_has_a_page_whose_example_has_it_and_whose_mend_has_no_error() {
     let f = folder("explain");
-    let mut wrong = String::new();
+    let mut wrong = Vec::new();
     for code in loopwright::diagnostics::Code::ALL {
         let word = code.word();
         let page = run(&f, &["explain", word]);
@@ -281,9 +306,9 @@ fn each_code_has_a_page_whose_example_has_it_and_whose_mend_has_no_error() {
             let has = told.iter().any(|d| d["code"] == word);
             let alone = told.iter().all(|d| d["code"] == word);
             if if kind == "bad" { !has || !alone } else { has || document["ok"] != true } {
-                wrong += &format!("{word}, {kind}: {document:#}\n");
+                wrong.push(format!("{word}, {kind}: {document:#}\n"));
             }
         }
     }
-    assert!(wrong.is_empty(), "{wrong}");
+    assert!(wrong.is_empty(), "{}", wrong.concat());
 }

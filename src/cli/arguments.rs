@@ -45,7 +45,7 @@ pub(super) enum Command {
 /// When to colour.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
 pub(super) enum When {
-    /// On a terminal that takes it, unless NO_COLOR says otherwise
+    /// On a terminal that takes it, unless `NO_COLOR` says otherwise
     Auto,
     /// Always
     Always,

@@ -10,7 +10,8 @@ use crate::netlist::{Netlist, RequestKind};
 use crate::report::{self, TextOptions};
 use crate::resolve::{self, CommandLine};
 use crate::results::{Derive, ToldDiagnostic};
-use crate::source::SourceMap;
+use crate::source::{SourceMap, Span};
+use std::collections::HashSet;
 use std::path::Path;
 
 /// A model as far as it could be read.
@@ -49,7 +50,7 @@ impl Model {
         self.netlist.as_ref().filter(|_| !self.diagnostics.iter().any(Diagnostic::is_error))
     }
 
-    /// More to tell of it.
+    /// More to tell of it, each thing once.
     fn add(&mut self, diagnostics: Vec<Diagnostic>) {
         self.diagnostics.extend(diagnostics);
         sort(&mut self.diagnostics);
@@ -87,9 +88,11 @@ impl Model {
     }
 }
 
-/// In the order of the text; what stands in none comes last.
-fn sort(diagnostics: &mut [Diagnostic]) {
-    diagnostics.sort_by_key(|d| d.labels.first().map_or(crate::source::Span::NONE, |l| l.span));
+/// In the order of the text, each thing once; what stands in none comes last.
+fn sort(diagnostics: &mut Vec<Diagnostic>) {
+    let place = |d: &Diagnostic| d.labels.first().map_or(Span::NONE, |l| l.span);
+    diagnostics.sort_by(|a, b| (place(a), a.code, &a.message).cmp(&(place(b), b.code, &b.message)));
+    diagnostics.dedup();
 }
 
 fn command_line(values: &Values, requests: Vec<String>) -> CommandLine {
@@ -105,7 +108,7 @@ pub(super) fn check(arguments: &arguments::Check, looks: Looks, status: &mut u8)
     let line = command_line(&arguments.values, Vec::new());
     let json = arguments.output.format == Format::Json;
     let mut all: Vec<ToldDiagnostic> = Vec::new();
-    let mut lines = String::new();
+    let (mut lines, mut seen) = (String::new(), HashSet::new());
     for path in &arguments.files {
         let mut model = Model::read(path, &line);
         if let Some(netlist) = &model.netlist {
@@ -116,16 +119,16 @@ pub(super) fn check(arguments: &arguments::Check, looks: Looks, status: &mut u8)
             model.add(told);
         }
         *status = model.status(*status);
-        // A file that several use is told of once.
-        let told = model.told();
-        if all.is_empty() {
-            all = told;
-        } else {
-            let mut fresh = told.iter().map(|d| !all.contains(d)).collect::<Vec<_>>().into_iter();
-            model.diagnostics.retain(|_| fresh.next().unwrap_or(true));
-            let more: Vec<_> = told.into_iter().filter(|d| !all.contains(d)).collect();
-            all.extend(more);
-        }
+        // A mistake in a file that several use is told once.
+        let mut told = model.told().into_iter();
+        model.diagnostics.retain(|_| {
+            let Some(d) = told.next() else { return true };
+            let fresh = seen.insert(identity(&d)) || d.labels.is_empty();
+            if fresh {
+                all.push(d);
+            }
+            fresh
+        });
         if !json {
             model.tell(looks);
             lines += &summary(path, &model);
@@ -138,6 +141,19 @@ pub(super) fn check(arguments: &arguments::Check, looks: Looks, status: &mut u8)
         std::io::Write::write_all(&mut out, lines.as_bytes())?;
     }
     Ok(out.finish()?)
+}
+
+/// What a reader of results has to know of the netlist behind them.
+fn warnings(netlist: &Netlist) -> Vec<Diagnostic> {
+    let mut told = flow::check(netlist);
+    told.retain(|d| matches!(d.code, Code::AlgebraicLoop | Code::HiddenUnstableMode));
+    told
+}
+
+/// What makes two diagnostics the same to a reader.
+fn identity(d: &ToldDiagnostic) -> (Option<(String, usize, usize)>, Code, String) {
+    let place = d.labels.first().map(|l| (l.file.clone(), l.line, l.column));
+    (place, d.code, d.message.clone())
 }
 
 /// Whether a mistake leaves signals apart that may belong together: what seems unused then may well be used.
@@ -187,8 +203,9 @@ pub(super) fn derive(arguments: &arguments::Derive, looks: Looks, status: &mut u
         if netlist.requests.is_empty() && !arguments.characteristic {
             tell("nothing is asked for: add a line such as `find y / r` to the file, or name it on the command line\n");
         }
-        let derived = flow::derive(netlist, &options);
+        let mut derived = flow::derive(netlist, &options);
         (transfers, characteristic) = (derived.transfers, derived.characteristic);
+        derived.diagnostics.extend(warnings(netlist));
         model.add(derived.diagnostics);
     }
     *status = model.status(*status);
@@ -220,7 +237,11 @@ pub(super) fn mason(arguments: &arguments::Mason, looks: Looks, status: &mut u8)
         let single = |kind: &RequestKind| !matches!(kind, RequestKind::All | RequestKind::Zeros { .. });
         match netlist.requests.as_slice() {
             [request] if single(&request.kind) => match flow::mason(netlist, request) {
-                Ok(worked) => document = Some(worked),
+                Ok(worked) => {
+                    document = Some(worked);
+                    let told = warnings(netlist);
+                    model.add(told);
+                }
                 Err(told) => model.add(told),
             },
             _ => return Err("mason works out one request, such as `y / r` or `loop at u`".to_owned().into()),

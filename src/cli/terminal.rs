@@ -34,7 +34,7 @@ impl Looks {
     }
 }
 
-/// Whether to colour one stream. NO_COLOR counts when it is set and not empty, whatever its value.
+/// Whether to colour one stream. `NO_COLOR` counts when it is set and not empty, whatever its value.
 fn colored(when: When, terminal: bool, no_color: Option<&OsString>, term: Option<&OsString>) -> bool {
     match when {
         When::Always => true,

@@ -39,7 +39,7 @@ pub(super) fn unanswered(netlist: &Netlist) -> Option<Diagnostic> {
     let continuous = netlist.blocks.iter().find(|b| b.every.is_none());
     let mut diagnostic = Diagnostic::new(
         Code::LimitReached,
-        "this netlist has sampled blocks beside laws in s, and such a mixture is not answered exactly yet",
+        "this netlist has sampled blocks beside transfer functions (laws) in s, and such a mixture is not answered exactly yet",
     )
     .help("write the plant as a law in z (its step-invariant equivalent) with the same `every`, or all blocks in s");
     if let Some(block) = sampled {

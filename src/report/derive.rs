@@ -84,10 +84,10 @@ fn request(t: &Transfer, with_case: bool) -> String {
         TransferKind::Zeros => format!("zeros {} / {}", t.to.replace(',', ", "), t.from.replace(',', ", ")),
     };
     if !t.open.is_empty() {
-        text += &format!(" with {} open", t.open.join(", "));
+        text = format!("{text} with {} open", t.open.join(", "));
     }
     if with_case {
-        text += &format!(" in {}", t.case);
+        text = format!("{text} in {}", t.case);
     }
     text
 }
@@ -149,8 +149,9 @@ fn decimal_fraction(page: &mut Page<'_>, label: &str, decimal: &Decimal, variabl
             });
             first = false;
             let power = coefficients.len() - 1 - i;
-            if c.abs() != 1.0 || power == 0 {
-                out.push(&number::float(c.abs()));
+            let size = number::float(c.abs());
+            if size != "1" || power == 0 {
+                out.push(&size);
                 out.push(if power == 0 { "" } else { "·" });
             }
             match power {
@@ -251,7 +252,7 @@ fn why_no_roots(t: &Transfer, name: &str) -> Option<String> {
 
 /// The gain at s = 0 or z = 1, exact where it can be; and whether it is rounded.
 fn gain_at_zero(t: &Transfer) -> Option<(String, bool)> {
-    let pole = format!("none: there is a pole at {} = {}", t.variable, if t.variable == "z" { 1 } else { 0 });
+    let pole = format!("none: there is a pole at {} = {}", t.variable, i32::from(t.variable == "z"));
     let rounded = t.dc_gain.map(|gain| (number::float(gain), true));
     let Some(form) = t.form.as_ref().filter(|_| t.exact) else {
         return Some(rounded.unwrap_or((pole, false)));

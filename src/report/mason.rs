@@ -97,7 +97,7 @@ fn request(document: &Mason) -> String {
     let mut text =
         if document.at.is_empty() { format!("{} / {}", document.to, document.from) } else { document.from.clone() };
     if !document.open.is_empty() {
-        text += &format!(" with {} open", document.open.join(", "));
+        text = format!("{text} with {} open", document.open.join(", "));
     }
     text
 }

@@ -81,7 +81,7 @@ pub(super) fn lines(list: &[Root], plane: &Plane, poles: bool) -> Told {
                 let damping = told(rounded_float(damping, DIGITS_BESIDE), damping);
                 format!("ω_n = {frequency} rad/s, ζ = {damping}")
             }
-            Some((frequency, damping)) if poles && damping == 1.0 => {
+            Some((frequency, damping)) if poles && damping >= 1.0 => {
                 let time = 1.0 / frequency;
                 format!("time constant {} s", told(rounded_float(time, DIGITS_BESIDE), time))
             }

@@ -213,11 +213,11 @@ impl Naming<'_> {
                 continue;
             }
             out.push("(");
-            self.factor_of_power(out, &packed, i, scale);
+            Self::factor_of_power(out, &packed, i, scale);
             i += 1;
             while i < p.len() && packed.power(i) == power && !out.stopped() {
                 sign(out, (packed.monomials.is_negative(i) != flipped) != negative, false);
-                self.factor_of_power(out, &packed, i, scale);
+                Self::factor_of_power(out, &packed, i, scale);
                 i += 1;
             }
             out.push(")");
@@ -227,7 +227,7 @@ impl Naming<'_> {
     }
 
     /// One term without its sign and its power of the variable.
-    fn factor_of_power(&self, out: &mut Words<'_>, packed: &Packed<'_>, i: usize, scale: &Scale) {
+    fn factor_of_power(out: &mut Words<'_>, packed: &Packed<'_>, i: usize, scale: &Scale) {
         let any = tell_coefficient(out, packed, i, scale);
         if any {
             out.push("·");

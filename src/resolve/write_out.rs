@@ -805,7 +805,7 @@ impl<'a> Writer<'a> {
             let at = loaded.files[ctx.file].tree.expr(every).span;
             let d = Diagnostic::new(
                 Code::Syntax,
-                "`every` stands on a block with a law, not on an instance of a composite",
+                "`every` stands on a block with a transfer function (law), not on an instance of a composite",
             );
             self.tell(d.label(at, "here").help("hand the period to the composite as an argument"), ctx);
         }

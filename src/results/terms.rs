@@ -328,7 +328,7 @@ mod tests {
         }
         let names: Vec<(Var, String)> = (0..10).map(|b| (Var(20 + b), format!("k{b}"))).collect();
         let poly = Poly::from_terms(list);
-        let wanted = poly.terms().fold(String::new(), |mut text, (powers, c)| {
+        let wanted = poly.terms().fold(String::new(), |text, (powers, c)| {
             let negative = c < IBig::ZERO;
             let sign = match (text.is_empty(), negative) {
                 (true, true) => "-",

@@ -226,7 +226,7 @@ impl Reader<'_> {
                 return self.fail(
                     Diagnostic::new(Code::Syntax, "a derivative can't stand here")
                         .label(span, "`'` is for state equations")
-                        .help("in a law, `s` times a signal's transform is its derivative"),
+                        .help("in a transfer function (law), `s` times a signal's transform is its derivative"),
                 );
             }
             self.check(name, false)?;
