@@ -60,6 +60,13 @@ fn point(var: Var) -> u64 {
     (mixed >> 4) % PRIME
 }
 
+/// Room to work in, kept from one expression to the next.
+#[derive(Debug, Default)]
+pub struct Room {
+    open: Vec<(ExprId, bool)>,
+    values: Vec<Quotient>,
+}
+
 /// Values of the params of a netlist at one point.
 #[derive(Debug)]
 pub struct Probe<'n> {
@@ -76,19 +83,26 @@ impl<'n> Probe<'n> {
 
     /// Whether the expression surely has a value: no divisor in it is zero, and nothing stands in it that only the
     /// exact value can judge (a dead time, a function).
-    pub fn surely_has_value(&self, root: ExprId) -> bool {
+    pub fn surely_has_value(&self, root: ExprId, room: &mut Room) -> bool {
         // Each part is visited again when the values of its children lie on the stack.
-        let mut open = vec![(root, false)];
-        let mut values: Vec<Quotient> = Vec::new();
+        let Room { open, values } = room;
+        open.clear();
+        values.clear();
+        open.push((root, false));
         while let Some((id, ready)) = open.pop() {
             if !ready {
                 open.push((id, true));
-                let from = open.len();
-                open.extend(self.netlist.exprs.children(id).map(|c| (c, false)));
-                open[from..].reverse();
+                let mut children = self.netlist.exprs.children(id);
+                let (first, second) = (children.next(), children.next());
+                if let Some(second) = second {
+                    open.push((second, false));
+                }
+                if let Some(first) = first {
+                    open.push((first, false));
+                }
                 continue;
             }
-            let Some(value) = self.one(id, &mut values) else { return false };
+            let Some(value) = self.one(id, values) else { return false };
             values.push(value);
             if values.len() + open.len() > MAX_PROBE_SIZE {
                 return false;

@@ -6,10 +6,14 @@ use super::units::Dimension;
 use super::write_out::Writer;
 use crate::diagnostics::{Code, Diagnostic};
 use crate::netlist::expr::{Expr as Node, ExprId as NodeId};
-use crate::netlist::probe::Probe;
+use crate::netlist::probe::{Probe, Room};
 use crate::netlist::values::Values;
 use crate::netlist::{CaseId, Driver, InstanceId, Keep, Law, Netlist, SignalId, TimeBase};
 use crate::source::Span;
+use rayon::prelude::*;
+
+/// How many expressions one task probes: enough that starting it costs nothing.
+const MIN_PROBES: usize = 1_000;
 
 /// How many rounds of finding units of undeclared signals there are: each carries a unit on through at least one sum
 /// or block, and the rest stay unchecked.
@@ -50,8 +54,11 @@ impl Writer<'_> {
                 }
             };
             let probe = Probe::new(net, &values);
-            let failing = expressions(net).filter(|e| !probe.surely_has_value(*e));
-            told.extend(failing.filter_map(|e| values.evaluate(e).err()).map(|d| in_case(*d)));
+            let all: Vec<NodeId> = expressions(net).collect();
+            let proven = |room: &mut Room, e: &NodeId| (!probe.surely_has_value(*e, room)).then_some(*e);
+            let open: Vec<Option<NodeId>> =
+                all.par_iter().with_min_len(MIN_PROBES).map_init(Room::default, proven).collect();
+            told.extend(open.into_iter().flatten().filter_map(|e| values.evaluate(e).err()).map(|d| in_case(*d)));
         }
         self.told.extend(told);
     }
@@ -117,11 +124,14 @@ impl Writer<'_> {
         self.told.push(d);
     }
 
+    /// The closest driven signal of the same scope, under the name that it has there.
     fn near_signal(&self, name: &str) -> Option<String> {
+        let (prefix, own) = name.rfind('.').map_or(("", name), |dot| name.split_at(dot + 1));
         let driven = (0..self.net.signals.len())
             .filter(|&i| self.net.signals[i].driver != Driver::Nothing)
-            .map(|i| self.net.signal_name(SignalId(i as u32)));
-        super::suggest::did_you_mean(name, driven.take(20_000))
+            .filter_map(|i| self.net.signal_name(SignalId(i as u32)).strip_prefix(prefix))
+            .filter(|other| !other.contains('.'));
+        super::suggest::did_you_mean(own, driven.take(20_000))
     }
 
     /// Finds units of undeclared signals from what drives them, where all of it is known.
@@ -308,12 +318,13 @@ impl Writer<'_> {
 /// All expressions whose values laws and sums need.
 fn expressions(net: &Netlist) -> impl Iterator<Item = NodeId> + '_ {
     let laws = net.blocks.iter().flat_map(|b| {
-        let law: Vec<NodeId> = match &b.law {
-            Law::Scalar(e) => vec![*e],
+        let scalar = if let Law::Scalar(e) = b.law { Some(e) } else { None };
+        let several: Vec<NodeId> = match &b.law {
+            Law::Scalar(_) => Vec::new(),
             Law::Matrix(rows) => rows.iter().flatten().copied().collect(),
             Law::States(lines) => lines.iter().flat_map(|l| l.terms.iter().map(|t| t.coefficient)).collect(),
         };
-        law.into_iter().chain(b.every)
+        scalar.into_iter().chain(several).chain(b.every)
     });
     laws.chain(net.terms.iter().filter_map(|t| t.factor))
 }
