@@ -379,16 +379,19 @@ impl Writer<'_> {
         }
         let DefineBody::Law(body) = define.body else {
             let name = loaded.files[ctx.file].text(call.callee);
-            let d =
-                Diagnostic::new(Code::Syntax, format!("`{name}` is a composite, and stands alone as a block's transfer function (law)"))
-                    .label(call.callee, "can't be part of an expression")
-                    .help("give the instance a block of its own: `block name : inputs -> outputs = …`");
+            let d = Diagnostic::new(
+                Code::Syntax,
+                format!("`{name}` is a composite, and stands alone as a block's transfer function (law)"),
+            )
+            .label(call.callee, "can't be part of an expression")
+            .help("give the instance a block of its own: `block name : inputs -> outputs = …`");
             return Ok(self.broken(d, ctx));
         };
         self.count(1, span)?;
         let depth = ctx.frame.map_or(0, |f| self.frames[f].depth) + 1;
         if depth > MAX_DEFINE_DEPTH {
-            let message = format!("defined transfer functions (laws) call each other more than {MAX_DEFINE_DEPTH} deep");
+            let message =
+                format!("defined transfer functions (laws) call each other more than {MAX_DEFINE_DEPTH} deep");
             return self.limit(Diagnostic::new(Code::LimitReached, message).label(span, "here"));
         }
         let Some(arguments) = self.arguments(id, place, span, ctx)? else { return Ok(self.unknown_value(span)) };

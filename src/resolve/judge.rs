@@ -29,38 +29,6 @@ impl Writer<'_> {
             self.judge_laws();
         }
         self.find_time_base();
-        self.judge_values();
-    }
-
-    /// Works out all values, for nominal and for each case: divisions by zero, circles of a case, limits.
-    fn judge_values(&mut self) {
-        if self.told.iter().any(Diagnostic::is_error) {
-            return;
-        }
-        let net = &self.net;
-        let mut told = Vec::new();
-        let cases = std::iter::once(None).chain((0..net.cases.len()).map(|i| Some(CaseId(i as u32))));
-        for case in cases {
-            let name = case.map(|c| net.cases[c.index()].name.as_str());
-            let in_case = |d: Diagnostic| match name {
-                Some(name) => Diagnostic { message: format!("{} (in case `{name}`)", d.message), ..d },
-                None => d,
-            };
-            let values = match Values::new(net, case, &Keep::Nothing) {
-                Ok(values) => values,
-                Err(errors) => {
-                    told.extend(errors.into_iter().map(in_case));
-                    continue;
-                }
-            };
-            let probe = Probe::new(net, &values);
-            let all: Vec<NodeId> = expressions(net).collect();
-            let proven = |room: &mut Room, e: &NodeId| (!probe.surely_has_value(*e, room)).then_some(*e);
-            let open: Vec<Option<NodeId>> =
-                all.par_iter().with_min_len(MIN_PROBES).map_init(Room::default, proven).collect();
-            told.extend(open.into_iter().flatten().filter_map(|e| values.evaluate(e).err()).map(|d| in_case(*d)));
-        }
-        self.told.extend(told);
     }
 
     fn judge_signals(&mut self) {
@@ -313,6 +281,33 @@ impl Writer<'_> {
         }
         false
     }
+}
+
+/// Works out all values, for nominal and for each case: divisions by zero, circles of a case, limits.
+pub(super) fn values(net: &Netlist) -> Vec<Diagnostic> {
+    let mut told = Vec::new();
+    let cases = std::iter::once(None).chain((0..net.cases.len()).map(|i| Some(CaseId(i as u32))));
+    for case in cases {
+        let name = case.map(|c| net.cases[c.index()].name.as_str());
+        let in_case = |d: Diagnostic| match name {
+            Some(name) => Diagnostic { message: format!("{} (in case `{name}`)", d.message), ..d },
+            None => d,
+        };
+        let values = match Values::new(net, case, &Keep::Nothing) {
+            Ok(values) => values,
+            Err(errors) => {
+                told.extend(errors.into_iter().map(in_case));
+                continue;
+            }
+        };
+        let probe = Probe::new(net, &values);
+        let all: Vec<NodeId> = expressions(net).collect();
+        let proven = |room: &mut Room, e: &NodeId| (!probe.surely_has_value(*e, room)).then_some(*e);
+        let open: Vec<Option<NodeId>> =
+            all.par_iter().with_min_len(MIN_PROBES).map_init(Room::default, proven).collect();
+        told.extend(open.into_iter().flatten().filter_map(|e| values.evaluate(e).err()).map(|d| in_case(*d)));
+    }
+    told
 }
 
 /// All expressions whose values laws and sums need.

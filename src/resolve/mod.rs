@@ -76,6 +76,11 @@ pub fn resolve(sources: &mut SourceMap, root: FileId, loader: &dyn Loader, line:
         return Resolved { netlist: None, diagnostics: reached.collect() };
     }
     diagnostics.extend(told);
+    // The trees are the larger part of what is held, and no longer needed.
+    drop(loaded);
+    if !diagnostics.iter().any(Diagnostic::is_error) {
+        diagnostics.extend(judge::values(&netlist));
+    }
     Resolved { netlist: Some(netlist), diagnostics: in_order(diagnostics) }
 }
 

@@ -23,7 +23,10 @@ impl<'a> Writer<'a> {
     ) -> Result<(), LimitReached> {
         if let Some(every) = block.every {
             let at = self.loaded.files[ctx.file].tree.expr(every).span;
-            let d = Diagnostic::new(Code::Syntax, "`every` stands on a block with a transfer function (law), not on state equations");
+            let d = Diagnostic::new(
+                Code::Syntax,
+                "`every` stands on a block with a transfer function (law), not on state equations",
+            );
             self.tell(d.label(at, "here").help("write a sampled block's law in z"), ctx);
             self.net.blocks[id.index()].every = None;
         }
