@@ -60,6 +60,14 @@ pub(super) fn check(netlist: &Netlist) -> Vec<Diagnostic> {
     late.diagnostics
 }
 
+/// The laws that would answer before they are asked, in z: results are no use to anybody then.
+pub(super) fn early(wiring: &Wiring<'_>) -> Vec<Diagnostic> {
+    let mut leads = Leads::new(wiring.netlist, None, &Keep::Nothing);
+    let mut late = Late { cases: Cases::new(wiring.netlist), diagnostics: Vec::new() };
+    let found = laws(wiring, &mut leads, &mut late);
+    improper::tell(wiring, None, &found)
+}
+
 /// Looks at every law, coefficient and factor: tells those that have no value, and gives the blocks whose law is
 /// improper.
 fn laws<'n>(wiring: &Wiring<'n>, leads: &mut Leads<'n>, late: &mut Late<'n>) -> Vec<Improper<'n>> {

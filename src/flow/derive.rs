@@ -6,7 +6,7 @@ use super::rows::Laws;
 use super::system::{Failure, Part, Question, Solved};
 use super::transfer::{self, Head};
 use super::{
-    DeriveOptions, Derived, Method, cancelled, characteristic, ill_posed, mason, modes, rates, system, verify,
+    DeriveOptions, Derived, Method, cancelled, characteristic, check, ill_posed, mason, modes, rates, system, verify,
 };
 use crate::algebra::{Fraction, Poly};
 use crate::diagnostics::{Code, Diagnostic};
@@ -47,6 +47,9 @@ pub(super) fn derive(netlist: &Netlist, options: &DeriveOptions) -> Derived {
         diagnostics: Vec::new(),
         looked_at: Vec::new(),
     };
+    if sampled {
+        check::early(&run.wiring).into_iter().for_each(|d| run.tell(d));
+    }
     let mut cases = Cases::new(netlist);
     for request in &netlist.requests {
         let asked = cases::of(netlist, &request.clauses.cases, request.span, &mut run.diagnostics);

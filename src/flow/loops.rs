@@ -60,6 +60,11 @@ impl Teller<'_, '_> {
         text::fraction(&self.names, f)
     }
 
+    fn power_text(&self, gain: &str, power: i64) -> String {
+        let sampled = super::transfer::is_sampled(self.wiring.netlist.time_base);
+        power_text(gain, power, if sampled { "z" } else { "s" })
+    }
+
     /// The product of the gains of a walk, with its power of s.
     fn gain(&self, walk: &[usize]) -> (Fraction, i64) {
         walk.iter()
@@ -96,7 +101,7 @@ impl Teller<'_, '_> {
                 ),
                 Solvable::Grows => format!(
                     "algebraic loop `{walk}`: its gain grows without bound, as {} at high frequency",
-                    power_text(&gain_text, power)
+                    self.power_text(&gain_text, power)
                 ),
                 Solvable::Determinant(_) | Solvable::Undecided(_) => {
                     format!(
@@ -111,7 +116,7 @@ impl Teller<'_, '_> {
             .take(MAX_WALKS)
             .map(|w| {
                 let (gain, power) = self.gain(w);
-                format!("`{}` with gain {}", self.walk(w), power_text(&self.text(&gain), power))
+                format!("`{}` with gain {}", self.walk(w), self.power_text(&self.text(&gain), power))
             })
             .collect();
         let more = walks.len().saturating_sub(MAX_WALKS);
@@ -212,7 +217,7 @@ impl Teller<'_, '_> {
         let net = self.wiring.netlist;
         let (from, to) = (self.tangle.signals[branch.from], self.tangle.signals[branch.to]);
         let (span, name) = walk::element(self.wiring, to);
-        let gain = power_text(&self.text(&branch.gain), branch.power);
+        let gain = self.power_text(&self.text(&branch.gain), branch.power);
         let ends = match net.signals[to.index()].driver {
             Driver::Block(b) if matches!(net.blocks[b.index()].law, Law::Scalar(_)) => String::new(),
             Driver::Block(_) => format!(" from `{}` to `{}`", net.signal_name(from), net.signal_name(to)),
@@ -225,14 +230,31 @@ impl Teller<'_, '_> {
     }
 }
 
-/// A gain with its power of s: `4`, `2*s`, `3/s^2`.
-fn power_text(gain: &str, power: i64) -> String {
-    let gain = if gain.contains(' ') && power != 0 { format!("({gain})") } else { gain.to_owned() };
-    match power {
-        0 => gain,
-        1 => format!("{gain}*s"),
-        2.. => format!("{gain}*s^{power}"),
-        -1 => format!("{gain}/s"),
-        _ => format!("{gain}/s^{}", -power),
+/// A gain with its power of s (or z): `4`, `2*s`, `-s^2`, `3/s`.
+fn power_text(gain: &str, power: i64, variable: &str) -> String {
+    let exponent = power.unsigned_abs();
+    let powers = if exponent == 1 { variable.to_owned() } else { format!("{variable}^{exponent}") };
+    let gain = if power != 0 && gain.contains(' ') || power < 0 && gain.contains('/') {
+        format!("({gain})")
+    } else {
+        gain.to_owned()
+    };
+    match (power, gain.as_str()) {
+        (0, _) => gain,
+        (1.., "1") => powers,
+        (1.., "-1") => format!("-{powers}"),
+        (1.., _) => format!("{gain}*{powers}"),
+        _ => format!("{gain}/{powers}"),
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::power_text;
+
+    #[test]
+    fn gains_with_powers_read_well() {
+        let told = [("4", 0), ("1", 2), ("-1", 1), ("K + 1", 1), ("1/2", -1)].map(|(g, k)| power_text(g, k, "s"));
+        assert_eq!(told, ["4", "s^2", "-s", "(K + 1)*s", "(1/2)/s"]);
     }
 }
