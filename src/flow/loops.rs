@@ -173,7 +173,7 @@ impl Teller<'_, '_> {
         format!(
             "it has a solution, {} times what enters it, unless {} = 0",
             self.text(&factor),
-            text::poly(&self.names, rest.numerator())
+            text::sum(&self.names, rest.numerator())
         )
     }
 

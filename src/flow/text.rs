@@ -4,7 +4,6 @@ use crate::algebra::factor::{Factored, factor};
 use crate::algebra::{Fraction, IBig, Poly, RBig, Var, decimal};
 use crate::netlist::values::{PARAMS, Values};
 use dashu_base::{Abs, Sign, Signed};
-use std::fmt::Write;
 
 /// Fractions of more terms than this are not factored for reading: nobody would read them.
 const MAX_FACTORED_TERMS: usize = 60;
@@ -79,28 +78,8 @@ fn named<'a>(names: &'a Names, powers: &'a [(Var, u32)]) -> impl Iterator<Item =
     powers.iter().map(|&(var, power)| (names.get(var), u64::from(power)))
 }
 
-/// A polynomial, its terms in descending lexicographic order of exponents.
-///
-/// Works on the packed terms: what is written may be hundreds of megabytes.
-pub(crate) fn poly(names: &Names, p: &Poly) -> String {
-    let fields: Vec<_> = p.fields().iter().map(|f| (f, names.get(f.var))).collect();
-    let mut out = String::new();
-    let mut digits = String::new();
-    for i in 0..p.len() {
-        let (key, c) = (p.key(i), p.values().get(i));
-        let negative = c.sign() == Sign::Negative;
-        digits.clear();
-        if write!(digits, "{}", c.abs()).is_err() {
-            continue;
-        }
-        let powers = fields.iter().map(|(f, name)| (*name, f.get(key))).filter(|p| p.1 > 0);
-        push_term(&mut out, negative, &digits, powers);
-    }
-    if out.is_empty() { "0".to_owned() } else { out }
-}
-
 /// A polynomial as it is read: `K*s` rather than `s*K`.
-fn sum(names: &Names, p: &Poly) -> String {
+pub(crate) fn sum(names: &Names, p: &Poly) -> String {
     let mut out = String::new();
     for (mut powers, c) in p.terms() {
         symbols_first(&mut powers);
@@ -267,7 +246,7 @@ mod tests {
     #[test]
     fn polynomials_and_fractions_read_as_the_contract_says() {
         let p = v(1).mul(&v(2)).add(&c(3)).sub(&v(1).pow(2));
-        assert_eq!(poly(&letters(), &p), "-K^2 + K*T + 3");
+        assert_eq!(sum(&letters(), &p), "-K^2 + K*T + 3");
         let f = Fraction::new(c(10), v(0).add(&c(2))).unwrap_or_else(Fraction::one);
         assert_eq!(fraction(&letters(), &f), "10/(s + 2)");
         let f = Fraction::new(v(1), v(2)).unwrap_or_else(Fraction::one);
