@@ -5,8 +5,12 @@
 //! [`judge`] tells what only the whole shows (undriven signals, units of signals, values of cases).
 
 mod bind;
+mod blocks;
+mod calls;
 mod circles;
+mod declare;
 mod files;
+mod instances;
 mod judge;
 mod linear;
 mod numbers;
@@ -18,6 +22,7 @@ mod suggest;
 mod tests;
 mod unit_text;
 pub mod units;
+mod whole;
 mod write_out;
 
 use crate::diagnostics::{Code, Diagnostic};
