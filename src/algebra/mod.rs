@@ -6,6 +6,7 @@ pub mod factor;
 mod fraction;
 pub mod functions;
 mod gcd;
+pub mod modular;
 mod poly;
 pub(crate) mod prime;
 mod residues;

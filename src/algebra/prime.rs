@@ -19,7 +19,7 @@ pub(crate) struct Prime {
 }
 
 impl Prime {
-    fn new(p: u64) -> Self {
+    pub(crate) fn new(p: u64) -> Self {
         // Newton's iteration doubles the bits that are right, from 5 to more than 64.
         let mut inverse = p.wrapping_mul(3) ^ 2;
         for _ in 0..5 {
@@ -88,7 +88,7 @@ impl Prime {
     }
     /// Whether a number below 2^62 is prime: Miller and Rabin's test with the first twelve primes as bases decides up
     /// to 3·10^24 (Sorenson and Webster, "Strong pseudoprimes to twelve prime bases", 2017).
-    fn is_prime(n: u64) -> bool {
+    pub(crate) fn is_prime(n: u64) -> bool {
         const BASES: [u64; 12] = [2, 3, 5, 7, 11, 13, 17, 19, 23, 29, 31, 37];
         if BASES.iter().any(|b| n.is_multiple_of(*b)) {
             return false;
