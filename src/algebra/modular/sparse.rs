@@ -117,8 +117,13 @@ pub(super) fn read(system: &System, rights: &[&[(usize, Poly)]]) -> Option<(Vec<
         rows.push(Row { entries: entries?, right: Vec::new() });
     }
     for (k, right) in rights.iter().enumerate() {
-        for (i, p) in right.iter().filter(|t| !t.1.is_zero()) {
-            rows[*i].right.push((k, p.to_dense(Var::S)?));
+        let mut values: Vec<&(usize, Poly)> = right.iter().collect();
+        values.sort_by_key(|v| v.0);
+        for same in values.chunk_by(|a, b| a.0 == b.0) {
+            let sum = same.iter().fold(Poly::zero(), |s, v| s.add(&v.1));
+            if !sum.is_zero() {
+                rows[same[0].0].right.push((k, sum.to_dense(Var::S)?));
+            }
         }
     }
     let mut factor = IBig::ONE;
