@@ -79,9 +79,12 @@ pub(crate) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec
             }
         }
     };
+    // Most coefficients of symbolic polynomials are small.
+    let known: Vec<u64> = (-64..64).map(|c| prime.of_signed(c)).collect();
+    let residue = |c: i64| known.get(c.wrapping_add(64) as usize).copied().unwrap_or_else(|| prime.of_signed(c));
     match p.values() {
         Coefficients::Small(c) => {
-            p.keys().chunks_exact(w).zip(c).for_each(|(key, &c)| visit(key, prime.of_signed(c)));
+            p.keys().chunks_exact(w).zip(c).for_each(|(key, &c)| visit(key, residue(c)));
         }
         Coefficients::Big(c) => p.keys().chunks_exact(w).zip(c).for_each(|(key, c)| visit(key, prime.of_big(c))),
     }

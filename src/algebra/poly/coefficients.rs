@@ -148,6 +148,10 @@ pub(crate) fn gcd_word(mut a: u64, mut b: u64) -> u64 {
 /// A coefficient in the inner loops: a machine integer that is known not to overflow, or a big one.
 pub(crate) trait Coefficient: Clone + Send + Sync {
     const ZERO: Self;
+    /// Whether [`Self::kept`] costs nothing, so that merging needs no branches.
+    const MACHINE: bool;
+    /// Itself or 0.
+    fn kept(&self, keep: bool) -> Self;
     fn is_zero(&self) -> bool;
     fn add(&mut self, other: &Self);
     fn negate(&mut self);
@@ -166,6 +170,10 @@ macro_rules! machine {
     ($type:ty, $collect:expr) => {
         impl Coefficient for $type {
             const ZERO: Self = 0;
+            const MACHINE: bool = true;
+            fn kept(&self, keep: bool) -> Self {
+                self & -Self::from(keep)
+            }
             fn is_zero(&self) -> bool {
                 *self == 0
             }
@@ -213,6 +221,10 @@ machine!(i128, |values: Vec<i128>| {
 
 impl Coefficient for IBig {
     const ZERO: Self = Self::ZERO;
+    const MACHINE: bool = false;
+    fn kept(&self, keep: bool) -> Self {
+        if keep { self.clone() } else { Self::ZERO }
+    }
     fn is_zero(&self) -> bool {
         *self == Self::ZERO
     }

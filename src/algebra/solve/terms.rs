@@ -57,38 +57,35 @@ where
     let room = a.0.len() + b.0.len();
     let (mut keys, mut values) = (Vec::with_capacity(room), Vec::with_capacity(room));
     let (mut i, mut j) = (0, 0);
-    if let (Some(x), Some(y)) = (a.0.first(), b.0.first()) {
-        let (mut x, mut y) = (a.2(x), b.2(y));
-        loop {
-            let order = x.cmp(&y);
-            if order == Ordering::Equal {
-                let mut c = a.3(&a.1[i]);
-                c.add(&b.3(&b.1[j]));
-                (i, j) = (i + 1, j + 1);
-                if !c.is_zero() {
-                    keys.push(x);
-                    values.push(c);
-                }
-                if i == a.0.len() || j == b.0.len() {
-                    break;
-                }
-                (x, y) = (a.2(&a.0[i]), b.2(&b.0[j]));
-            } else if order == Ordering::Greater {
+    while i < a.0.len() && j < b.0.len() {
+        let (x, y) = (a.2(&a.0[i]), b.2(&b.0[j]));
+        let order = x.cmp(&y);
+        if C::MACHINE {
+            // Which of the two comes next can't be foretold, so nothing branches on it.
+            let (left, right) = (order != Ordering::Less, order != Ordering::Greater);
+            let mut c = a.3(&a.1[i]).kept(left);
+            c.add(&b.3(&b.1[j]).kept(right));
+            if !c.is_zero() {
+                keys.push(if left { x } else { y });
+                values.push(c);
+            }
+            i += usize::from(left);
+            j += usize::from(right);
+        } else if order == Ordering::Greater {
+            keys.push(x);
+            values.push(a.3(&a.1[i]));
+            i += 1;
+        } else if order == Ordering::Less {
+            keys.push(y);
+            values.push(b.3(&b.1[j]));
+            j += 1;
+        } else {
+            let mut c = a.3(&a.1[i]);
+            c.add(&b.3(&b.1[j]));
+            (i, j) = (i + 1, j + 1);
+            if !c.is_zero() {
                 keys.push(x);
-                values.push(a.3(&a.1[i]));
-                i += 1;
-                if i == a.0.len() {
-                    break;
-                }
-                x = a.2(&a.0[i]);
-            } else {
-                keys.push(y);
-                values.push(b.3(&b.1[j]));
-                j += 1;
-                if j == b.0.len() {
-                    break;
-                }
-                y = b.2(&b.0[j]);
+                values.push(c);
             }
         }
     }
