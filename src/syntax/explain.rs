@@ -1,13 +1,13 @@
 //! What to say where a text leaves the grammar: what was found, what could stand there, and the mend.
 
 use super::grammar::{Failure, Rule};
-use super::words::{WORDS_TOLD, nearest};
+use super::words::{WORDS_TOLD, Word, nearest, statement_word};
 use crate::diagnostics::{Code, Diagnostic};
 use crate::source::Span;
 
 /// The diagnostic for a statement that begins with no word of the language. `start` and `length` say where in `text`.
 pub(super) fn unknown_word(text: &str, base: u32, start: usize, length: usize) -> Diagnostic {
-    let span = Span::new(start as u32 + base, (start + length) as u32 + base);
+    let span = Span::new((start as u32).wrapping_add(base), ((start + length) as u32).wrapping_add(base));
     let written = text.get(start..start + length).unwrap_or("");
     if let Some((meant, _)) = nearest(written) {
         return Diagnostic::new(Code::Syntax, format!("no statement begins with `{written}`"))
@@ -59,11 +59,9 @@ pub(super) fn token_length(rest: &str) -> usize {
 /// A rule's name for people; `None` for what goes without saying.
 fn told(rule: Rule) -> Option<&'static str> {
     Some(match rule {
-        Rule::identifier | Rule::name | Rule::names | Rule::ports | Rule::port | Rule::define_param => "a name",
+        Rule::identifier | Rule::name | Rule::names | Rule::port | Rule::parameter => "a name",
         Rule::number | Rule::expression | Rule::group | Rule::argument => "a value",
-        Rule::minus => return None,
         Rule::operator => "an operator",
-        Rule::text => "a text in `\"`",
         Rule::comma => "`,`",
         Rule::equals => "`=`",
         Rule::colon => "`:`",
@@ -71,51 +69,277 @@ fn told(rule: Rule) -> Option<&'static str> {
         Rule::dots => "`..`",
         Rule::slash => "`/`",
         Rule::percent => "`%`",
-        Rule::prime => return None,
         Rule::open | Rule::arguments => "`(`",
         Rule::close => "`)`",
-        Rule::row_open | Rule::row | Rule::matrix => "`[`",
-        Rule::row_close | Rule::unit_end => "`]`",
-        Rule::index_end => "`}`",
+        Rule::row | Rule::matrix => "`[`",
         Rule::body => "`{`",
-        Rule::unit => "a unit in `[ ]`",
-        Rule::index => return None,
-        Rule::EOI => "the end of the statement",
         Rule::comparison => "`>=`, `<=`, `>` or `<`",
-        Rule::within | Rule::within_word => "`within`",
-        Rule::every | Rule::every_word => "`every`",
-        Rule::with_open | Rule::with_word => "`with`",
-        Rule::keep | Rule::keep_word => "`keep`",
-        Rule::in_cases => "`in`",
-        Rule::at | Rule::at_word => "`at`",
-        Rule::over | Rule::over_word => "`over`",
-        Rule::to | Rule::to_word => "`to`",
-        Rule::stimulus | Rule::for_word => "`for`",
+        Rule::with_open => "`with`",
+        Rule::keep => "`keep`",
+        Rule::in_cases | Rule::in_word => "`in`",
+        Rule::at => "`at`",
+        Rule::over => "`over`",
+        Rule::to => "`to`",
+        Rule::stimulus => "`for`",
         Rule::open_word => "`open`",
         Rule::transfer => "a request such as `y / r`",
-        Rule::find_all | Rule::find_loop | Rule::find_zeros => return None,
+        Rule::EOI => "the end of the statement",
         _ => return None,
     })
 }
 
-/// The diagnostic for a text that leaves the grammar. `text` begins at `base`.
+/// Where a statement leaves the grammar.
+struct Place<'t> {
+    /// The statement, up to the `{` of its body.
+    text: &'t str,
+    /// Its first word.
+    word: Option<Word>,
+    /// What stands before the place, blanks at its end left out.
+    before: &'t str,
+    /// What can't stand where it does, and all after it.
+    rest: &'t str,
+    /// What could stand there.
+    expected: Vec<&'static str>,
+}
+
+/// The diagnostic for a statement that leaves the grammar. `text` begins at `base`.
 pub(super) fn failure(text: &str, base: u32, failure: &Failure) -> Diagnostic {
     let at = failure.at.min(text.len());
     let rest = text.get(at..).unwrap_or("");
-    let span = Span::new(at as u32 + base, (at + token_length(rest)) as u32 + base);
-    let mut expected: Vec<&str> = Vec::new();
-    for word in failure.expected.iter().filter_map(|&rule| told(rule)) {
-        if !expected.contains(&word) {
-            expected.push(word);
-        }
+    let span = Span::new((at as u32).wrapping_add(base), ((at + token_length(rest)) as u32).wrapping_add(base));
+    if failure.stack_full {
+        return stack_full(span);
     }
-    let expected = match expected.as_slice() {
+    let word = statement_word(&text[..token_length(text)]);
+    let before = text.get(..at).unwrap_or("").trim_end();
+    let mut place = Place { text, word, before, rest, expected: Vec::new() };
+    if at == 0 {
+        return place.nothing_after_word(base);
+    }
+    place.expect(&failure.expected);
+    if let Some((message, label, help)) = place.special() {
+        return Diagnostic::new(Code::Syntax, message).label(span, label).help(help);
+    }
+    let expected = match place.expected.as_slice() {
         [] => "something else".to_owned(),
         [one] => (*one).to_owned(),
         [many @ .., last] => format!("{} or {last}", many.join(", ")),
     };
-    Diagnostic::new(Code::Syntax, format!("expected {expected}, found {}", found(text, at)))
-        .label(span, format!("expected {expected}"))
+    let diagnostic = Diagnostic::new(Code::Syntax, format!("expected {expected}, found {}", found(text, at)))
+        .label(span, format!("expected {expected}"));
+    match place.help() {
+        Some(help) => diagnostic.help(help),
+        None => diagnostic,
+    }
+}
+
+/// The diagnostic for a statement that the parser had no room on the stack for.
+fn stack_full(at: Span) -> Diagnostic {
+    Diagnostic::new(Code::LimitReached, "a statement is nested too deep for the stack of this thread")
+        .label(at, "here")
+        .help("give inner parts names of their own: a `param`, a `define` or a signal")
+}
+
+/// Signs that look like those of the language, and what to write.
+const LOOKALIKES: [(&[char], &str); 9] = [
+    (&['·', '×', '∙', '⋅', '∗'], "`*`"),
+    (&['÷', '∕', '⁄'], "`/`"),
+    (&['−', '–', '—', '‐'], "`-`"),
+    (&['“', '”', '„', '«', '»', '‘', '’', '`'], "`\"`"),
+    (&['→', '⟶'], "`->`"),
+    (&['≥'], "`>=`"),
+    (&['≤'], "`<=`"),
+    (&['²', '³', '¹', '⁰', '⁻'], "a power with `^`"),
+    (
+        &['\u{a0}', '\u{2002}', '\u{2003}', '\u{2009}', '\u{202f}', '\u{3000}', '\u{feff}', '\u{200b}'],
+        "an ordinary space",
+    ),
+];
+
+impl<'t> Place<'t> {
+    /// Notes what could stand here, each once, the end of the statement last.
+    fn expect(&mut self, rules: &[Rule]) {
+        for told in rules.iter().filter_map(|&rule| told(rule)) {
+            if !self.expected.contains(&told) {
+                self.expected.push(told);
+            }
+        }
+        if self.expects("a value") {
+            self.expected.retain(|&told| told != "a name" && told != "`[`");
+        }
+        if self.expects("an operator") || self.expects("`,`") {
+            if let Some(closing) = open_bracket(self.before) {
+                self.expected.push(closing);
+            }
+        }
+        if self.expected.is_empty() && self.word == Some(Word::Use) {
+            self.expected.push("a path in `\"`");
+        }
+        if let Some(end) = self.expected.iter().position(|&told| told == told_end()) {
+            self.expected.remove(end);
+            self.expected.push(told_end());
+        }
+    }
+
+    fn expects(&self, what: &str) -> bool {
+        self.expected.contains(&what)
+    }
+
+    /// The name or number with which `before` ends.
+    fn last_token(&self) -> &'t str {
+        let start = self.before.rfind(|c: char| !unicode_ident::is_xid_continue(c));
+        let start = start.map_or(0, |at| at + self.before[at..].chars().next().map_or(1, char::len_utf8));
+        &self.before[start..]
+    }
+
+    /// The statement whose word has nothing behind it.
+    fn nothing_after_word(&self, base: u32) -> Diagnostic {
+        let length = token_length(self.text);
+        let word = &self.text[..length];
+        let expected = match self.word {
+            Some(Word::Use) => "a path in `\"`",
+            Some(Word::Find) => "a request such as `y / r`",
+            Some(Word::Require) => "a metric",
+            _ => "a name",
+        };
+        let span = Span::new(base, base.wrapping_add(length as u32));
+        Diagnostic::new(Code::Syntax, format!("expected {expected} after `{word}`"))
+            .label(span, "begins a statement")
+            .help(format!("`{word}`, a space, then {expected}"))
+    }
+
+    /// Message, label and help for what has a better explanation than what could stand there.
+    fn special(&self) -> Option<(String, String, String)> {
+        let first = self.rest.chars().next()?;
+        let owned = |message: &str, label: &str, help: String| Some((message.to_owned(), label.to_owned(), help));
+        if let Some((_, instead)) = LOOKALIKES.iter().find(|(signs, _)| signs.contains(&first)) {
+            let shown = if first.is_whitespace() || matches!(first, '\u{feff}' | '\u{200b}') {
+                format!("the blank U+{:04X}", u32::from(first))
+            } else {
+                format!("`{first}`")
+            };
+            let label = "not a sign of the language".to_owned();
+            return Some((format!("{shown} can't stand here"), label, format!("write {instead}")));
+        }
+        let after = &self.rest[first.len_utf8()..];
+        if first == '"' && !after.contains('"') {
+            return owned(
+                "a text is not closed",
+                "this `\"` has no other on its line",
+                "close the text with `\"`".to_owned(),
+            );
+        }
+        let touches = self.text.len() - self.rest.len() == self.before.len();
+        let digits = self.last_token();
+        let after_number = digits.starts_with(|c: char| c.is_ascii_digit());
+        if touches && after_number && matches!(first, 'e' | 'E') {
+            return owned(
+                "an exponent has no digits",
+                "digits expected after this",
+                format!("such as `{digits}{first}3`"),
+            );
+        }
+        let digit_after = after.starts_with(|c: char| c.is_ascii_digit());
+        if first == '.' && (after_number || digit_after) {
+            return owned(
+                "a point has digits on both sides",
+                "digits expected on both sides",
+                format!("such as `{}`", if after_number { format!("{digits}.0") } else { "0.5".to_owned() }),
+            );
+        }
+        None
+    }
+
+    /// Whether the place is in an index.
+    fn in_index(&self) -> bool {
+        open_bracket(self.before) == Some("`}`")
+    }
+
+    /// How to mend it, where that can be guessed.
+    fn help(&self) -> Option<String> {
+        let next = &self.rest[..token_length(self.rest)];
+        let first = next.chars().next();
+        let is_name = first.is_some_and(|c| c == '_' || unicode_ident::is_xid_start(c));
+        let last = self.last_token();
+        let number_before = last.starts_with(|c: char| c.is_ascii_digit());
+        if self.expects("an operator") && !self.expects("`%`") {
+            if is_name && number_before && self.before.len() + self.rest.len() == self.text.len() {
+                return Some(format!("there is no multiplication without `*`: write `{last}*{next}`"));
+            }
+            if is_name && (number_before || self.before.ends_with(')')) {
+                return Some(format!("a unit stands in brackets, such as `[{next}]`; a product has a `*`"));
+            }
+            if is_name || first == Some('(') || first.is_some_and(|c| c.is_ascii_digit()) {
+                return Some("there is no multiplication without `*`".to_owned());
+            }
+            if first == Some('[') {
+                return Some(
+                    "a unit stands after a number or a closing parenthesis; a name has the unit that it was declared with"
+                        .to_owned(),
+                );
+            }
+        }
+        let help = match (next, self.word) {
+            ("'", _) if self.expects(told_end()) => "a text stands between `\"`",
+            ("=" | ";" | "", Some(Word::Block | Word::Define | Word::Repeat)) if self.in_index() => {
+                "a `{` that touches a name is an index: put a space before the `{` of a body"
+            }
+            ("*", _) if self.before.ends_with('*') => "a power is written with `^`",
+            ("=", _) if self.before.ends_with('=') => "write one `=`",
+            ("=", Some(Word::Require)) => "a comparison is `>=`, `<=`, `>` or `<`",
+            ("==", Some(Word::Require)) => "a comparison is `>=`, `<=`, `>` or `<`",
+            (":", _) if self.rest.starts_with(":=") => "write `=`",
+            ("+", _) if self.expects("a value") => "leave the `+` out",
+            ("[", Some(Word::Define)) if self.expects("a value") => "a matrix stands only as the law of a `block`",
+            ("[", _) if self.expects("a value") => "a unit stands after its value, such as `3 [N*m]`",
+            (",", Some(Word::Input | Word::Output | Word::Signal | Word::Param)) => "declare one name a line",
+            ("/", Some(Word::Find)) if self.text.contains("loop") || self.text.contains("zeros") => {
+                "`find loop` and `find zeros` stand alone on their line"
+            }
+            (_, Some(Word::Find)) if self.before.ends_with("loop") => "a return ratio is `find loop at u`",
+            ("", Some(Word::Find)) if self.text.contains("zeros") => {
+                "transmission zeros are `find zeros y1, y2 / u1, u2`"
+            }
+            ("", Some(Word::Find)) if self.expects("`/`") => "a request names two signals: `y / r` is y's answer to r",
+            (_, Some(Word::Require)) if self.expects("`/`") => "what a metric is asked of is `at u` or `y/r`",
+            (_, Some(Word::Param)) if self.expects("`%`") => "a tolerance is `within 5%` or `within 3.0 .. 3.4 [unit]`",
+            ("=", Some(Word::Define)) if self.expects("`(`") => {
+                "a `define` has parameters: `define f(T) = …`; a value is a `param`"
+            }
+            ("=", Some(Word::Repeat)) => "such as `repeat k in 1..8 {`",
+            ("", Some(Word::Define | Word::Repeat | Word::Case | Word::Block)) if self.expects("`{`") => {
+                "the `{` of a body stands on the line of its statement, after a space"
+            }
+            (_, Some(Word::Model)) if self.expects(told_end()) => "a description stands between `\"`",
+            _ => return None,
+        };
+        Some(help.to_owned())
+    }
+}
+
+/// What is told of the end of a statement.
+fn told_end() -> &'static str {
+    told(Rule::EOI).unwrap_or_default()
+}
+
+/// The sign that closes the innermost bracket that is open at the end of `text`.
+fn open_bracket(text: &str) -> Option<&'static str> {
+    let mut open = Vec::new();
+    let mut in_text = false;
+    for byte in text.bytes() {
+        match byte {
+            b'"' => in_text = !in_text,
+            _ if in_text => {}
+            b'(' => open.push("`)`"),
+            b'[' => open.push("`]`"),
+            b'{' => open.push("`}`"),
+            b')' | b']' | b'}' => {
+                open.pop();
+            }
+            _ => {}
+        }
+    }
+    open.pop()
 }
 
 /// The diagnostic for a unit whose text leaves the grammar; `inside` is the place of that text.

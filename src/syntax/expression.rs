@@ -5,7 +5,7 @@
 //! nesting is bounded before the grammar sees them.
 
 use super::ast::{Argument, BinaryOp, Call, ExprId, ExprKind, Name, Repeated, RepeatedExpr, TemplateId};
-use super::grammar::{Event, Rule};
+use super::grammar::Rule;
 use super::reader::{Outcome, Reader, reserved};
 use super::split::MAX_NESTING;
 use super::words::is_reserved;
@@ -91,7 +91,7 @@ impl Reader<'_> {
         }
         if self.begins(Rule::unit) {
             unit = self.unit()?;
-            end = self.last_end();
+            end = self.last_end() + 1;
         }
         Ok((from, RangeEnd { value: to.id, unit, end }))
     }
@@ -130,15 +130,15 @@ impl Reader<'_> {
                     self.push_leaf(ExprKind::Number, span);
                 }
                 Rule::group => {
+                    // The group begins after its `(`.
                     let inside = self.expression()?;
-                    self.accept(Rule::close);
                     let end = self.take();
-                    self.values.push(Value { span: self.span(event.at, end.at), ..inside });
+                    self.values.push(Value { span: self.span(event.at - 1, end.at), ..inside });
                 }
                 Rule::unit => {
                     self.step_back();
                     let Some(unit) = self.unit()? else { continue };
-                    let end = self.last_end();
+                    let end = self.last_end() + 1;
                     if apart && !self.event().begins {
                         last_unit = Some((unit, end));
                     } else if let Some(value) = self.values.pop() {
@@ -146,7 +146,10 @@ impl Reader<'_> {
                         self.values.push(value);
                     }
                 }
-                _ => self.named(event)?,
+                _ => {
+                    self.step_back();
+                    self.named()?;
+                }
             }
         }
         self.reduce(0, first_operator)?;
@@ -210,44 +213,20 @@ impl Reader<'_> {
         )
     }
 
-    /// A name, a derivative or a call; `begin` is the beginning of the name.
-    fn named(&mut self, begin: Event) -> Outcome<()> {
-        let name = if self.begins(Rule::index) {
-            self.template(begin.at)?
-        } else {
-            let end = self.event().at;
-            Name { span: self.span(begin.at, end), template: TemplateId::NONE }
-        };
-        self.take();
-        if self.begins(Rule::prime) {
-            let prime = self.leaf();
-            let span = name.span.to(prime);
-            if !self.derivatives {
-                return self.fail(
-                    Diagnostic::new(Code::Syntax, "a derivative can't stand here")
-                        .label(span, "`'` is for state equations")
-                        .help("in a transfer function (law), `s` times a signal's transform is its derivative"),
-                );
-            }
-            self.check(name, false)?;
-            self.push_leaf(ExprKind::Derivative(name.template), span);
-        } else if self.begins(Rule::arguments) {
+    /// The name, derivative or call that begins next.
+    fn named(&mut self) -> Outcome<()> {
+        let (name, prime) = self.any_name()?;
+        if self.begins(Rule::arguments) && !prime {
             let value = self.call(name)?;
             self.values.push(value);
-        } else {
-            self.check(name, true)?;
-            self.push_leaf(ExprKind::Name(name.template), name.span);
+            return Ok(());
         }
-        Ok(())
-    }
-
-    /// Tells a path or a reserved name where none may stand; with `in_law`, `s`, `z` and `pi` may.
-    fn check(&mut self, name: Name, in_law: bool) -> Outcome<()> {
-        let text = self.slice(name.span);
-        self.check_path(name)?;
-        let variable = in_law && matches!(text, "s" | "z" | "pi");
-        if name.template == TemplateId::NONE && !variable && is_reserved(text) {
-            return self.fail(reserved(name.span, text));
+        self.check_name(name, !prime)?;
+        if prime {
+            let span = Span::new(name.span.start, name.span.end + 1);
+            self.push_leaf(ExprKind::Derivative(name.template), span);
+        } else {
+            self.push_leaf(ExprKind::Name(name.template), name.span);
         }
         Ok(())
     }
@@ -261,7 +240,7 @@ impl Reader<'_> {
         while self.enter(Rule::argument) {
             let value = self.expression()?;
             depth = depth.max(value.depth);
-            if self.begins(Rule::expression) {
+            if self.accept(Rule::in_word).is_some() {
                 let name = self.lone_name(value)?;
                 let (from, to) = self.whole_range()?;
                 depth = depth.max(from.depth).max(to.depth);
@@ -280,7 +259,6 @@ impl Reader<'_> {
             self.take();
             self.accept(Rule::comma);
         }
-        self.accept(Rule::close);
         let end = self.take().at;
         let span = Span::new(callee.span.start, self.span(end, end).end);
         let kind = match self.slice(callee.span) {

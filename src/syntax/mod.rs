@@ -55,7 +55,7 @@ pub fn parse(text: &str, base: u32) -> Parsed {
     let parts: Vec<&[Item]> = tasks(&split.items);
     let read = |items: &&[Item]| {
         let mut reader = Reader::new(text, base);
-        reader.read(items);
+        reader.read(items, &split.comments);
         (reader.tree, reader.diagnostics, reader.lost_names)
     };
     let parts: Vec<_> =

@@ -6,12 +6,17 @@
 use super::ast::{Equation, Expr, ExprId, ExprKind, Name, Piece, Setting, Statement, StatementKind, TemplateId, Tree};
 use super::explain;
 use super::expression::{Operator, Value};
-use super::grammar::{self, Event, Rule};
+use super::grammar::{self, Event, Events, Extent, Rule};
 use super::split::{Item, ItemKind};
 use super::words::{Word, is_reserved};
 use crate::diagnostics::{Code, Diagnostic};
 use crate::source::Span;
 use rustc_hash::FxHashSet;
+use std::borrow::Cow;
+
+/// How many items the grammar reads at once: enough that setting it up costs little, few enough that reading them again
+/// singly after a mistake costs little too.
+const ITEMS_A_RUN: usize = 32;
 
 /// What is wrong has been told; the statement is lost.
 #[derive(Debug)]
@@ -40,7 +45,7 @@ pub(super) struct Reader<'t> {
     /// Names in statements that are lost.
     pub(super) lost_names: Vec<Span>,
     frames: Vec<Frame>,
-    events: Vec<Event>,
+    events: Events,
     next: usize,
     /// What to add to an event's position to have its place in the address space.
     offset: u32,
@@ -67,7 +72,7 @@ impl<'t> Reader<'t> {
             diagnostics: Vec::new(),
             lost_names: Vec::new(),
             frames: Vec::new(),
-            events: Vec::new(),
+            events: Events::default(),
             next: 0,
             offset: base,
             paths: false,
@@ -79,13 +84,77 @@ impl<'t> Reader<'t> {
         }
     }
 
-    /// Reads all of `items`, in which every head has its close.
-    pub(super) fn read(&mut self, items: &[Item]) {
-        for item in items {
-            self.item(item);
+    /// Reads all of `items`, in which every head has its close. `comments` are those of the whole text.
+    pub(super) fn read(&mut self, items: &[Item], comments: &[Span]) {
+        let mut rest = items;
+        while !rest.is_empty() {
+            let length = rest.iter().take(ITEMS_A_RUN).take_while(|item| item.sound).count();
+            let (run, after) = rest.split_at(length.max(1));
+            if length == 0 || !self.run(run, comments) {
+                for item in run {
+                    self.single(item, comments);
+                }
+            }
+            rest = after;
         }
     }
 
+    /// Reads a run of sound items at once; `false`, with nothing read, where that fails.
+    fn run(&mut self, run: &[Item], comments: &[Span]) -> bool {
+        let (Some(first), Some(last)) = (run.first(), run.last()) else { return true };
+        let text = self.without_comments(first.start, last.end, comments);
+        if grammar::read(Rule::part, &text, &mut self.events).is_err() || !fits(&self.events.lines, run) {
+            return false;
+        }
+        self.offset = self.base + first.start;
+        for (i, item) in run.iter().enumerate() {
+            self.next = self.events.lines[i].first as usize + 1;
+            self.item(item);
+        }
+        true
+    }
+
+    /// Reads an item by itself, and tells what is wrong where that fails.
+    fn single(&mut self, item: &Item, comments: &[Span]) {
+        let rule = match item.kind {
+            ItemKind::Lost => return self.lose(item.start, item.end),
+            ItemKind::LostHead => return self.open_frame(None, item),
+            ItemKind::Close => return self.close_frame(item),
+            ItemKind::Equation | ItemKind::Setting => Rule::one_assignment,
+            ItemKind::Line(_) | ItemKind::Head(_) => Rule::one,
+        };
+        let text = self.without_comments(item.start, item.end, comments);
+        self.offset = self.base + item.start;
+        self.next = 1;
+        let (text, shift) = corrected(item, text);
+        self.offset = self.offset.wrapping_add_signed(shift);
+        let Err(failure) = grammar::read(rule, &text, &mut self.events) else { return self.item(item) };
+        self.diagnostics.push(explain::failure(&text, self.offset, &failure));
+        self.lose(item.start, item.end);
+        if let ItemKind::Head(_) = item.kind {
+            self.open_frame(None, item);
+        }
+    }
+
+    /// A stretch of the text, its comments overwritten with blanks.
+    fn without_comments(&self, start: u32, end: u32, comments: &[Span]) -> Cow<'t, str> {
+        let text = self.text.get(start as usize..end as usize).unwrap_or("");
+        let first = comments.partition_point(|comment| comment.start - self.base < start);
+        let inside = comments[first..].iter().take_while(|comment| comment.start - self.base < end);
+        if inside.clone().next().is_none() {
+            return Cow::Borrowed(text);
+        }
+        let mut copy = String::with_capacity(text.len());
+        for comment in inside {
+            let (from, to) = (comment.start - self.base - start, comment.end - self.base - start);
+            copy.push_str(text.get(copy.len()..from as usize).unwrap_or(""));
+            copy.extend(std::iter::repeat_n(' ', (to - from) as usize));
+        }
+        copy.push_str(text.get(copy.len()..).unwrap_or(""));
+        Cow::Owned(copy)
+    }
+
+    /// Takes an item whose events come next.
     fn item(&mut self, item: &Item) {
         match item.kind {
             ItemKind::Line(word) => {
@@ -97,23 +166,20 @@ impl<'t> Reader<'t> {
                 let head = self.statement(word, item);
                 self.open_frame(head, item);
             }
-            ItemKind::LostHead => self.open_frame(None, item),
             ItemKind::Equation => {
-                if let Some(equation) = self.part(Rule::equation, item, Self::equation) {
-                    if let Some(frame) = self.frames.last_mut() {
-                        frame.equations.push(equation);
-                    }
+                let equation = self.part(item, |reader| reader.equation(item));
+                if let (Some(equation), Some(frame)) = (equation, self.frames.last_mut()) {
+                    frame.equations.push(equation);
                 }
             }
             ItemKind::Setting => {
-                if let Some(setting) = self.part(Rule::setting, item, Self::setting) {
-                    if let Some(frame) = self.frames.last_mut() {
-                        frame.settings.push(setting);
-                    }
+                let setting = self.part(item, Self::setting);
+                if let (Some(setting), Some(frame)) = (setting, self.frames.last_mut()) {
+                    frame.settings.push(setting);
                 }
             }
             ItemKind::Close => self.close_frame(item),
-            ItemKind::Lost => self.lose(item.start, item.end),
+            ItemKind::Lost | ItemKind::LostHead => {}
         }
     }
 
@@ -158,42 +224,25 @@ impl<'t> Reader<'t> {
         }
     }
 
-    /// Reads a statement; `None`, told, where it can't be read.
+    /// Takes a statement; `None`, told, where it can't be kept.
     fn statement(&mut self, word: Word, item: &Item) -> Option<Statement> {
         if let Some(diagnostic) = self.misplaced(word, item) {
             self.diagnostics.push(diagnostic);
             self.lose(item.start, item.end);
             return None;
         }
-        let kind = self.part(word.rule(), item, |reader| reader.statement_kind(word))?;
+        let kind = self.part(item, |reader| reader.statement_kind(word))?;
         let span = Span::new(item.start + self.base, item.end + self.base);
         Some(Statement { span, kind })
     }
 
-    /// Reads an item by `rule`, then by `walk`; `None`, told, where that fails.
-    fn part<T>(&mut self, rule: Rule, item: &Item, walk: impl FnOnce(&mut Self) -> Outcome<T>) -> Option<T> {
-        let text = self.text.get(item.start as usize..item.end as usize)?;
-        self.offset = self.base + item.start;
-        let read = match corrected(item, text) {
-            None => grammar::read(rule, text, &mut self.events),
-            Some((text, shift)) => {
-                self.offset = self.offset.wrapping_add_signed(shift);
-                grammar::read(rule, &text, &mut self.events)
-            }
-        };
-        if let Err(failure) = read {
-            let base = self.base + item.start;
-            self.diagnostics.push(explain::failure(text, base, &failure));
-            self.lose(item.start, item.end);
-            return None;
-        }
+    /// Walks along the events of an item; `None`, told, with nothing left in the tree, where something is wrong.
+    fn part<T>(&mut self, item: &Item, walk: impl FnOnce(&mut Self) -> Outcome<T>) -> Option<T> {
         let marks = (self.tree.exprs.len(), self.tree.templates.len(), self.tree.calls.len());
         let more = (self.tree.repeated.len(), self.tree.units.len());
-        self.next = 1;
-        let outcome = walk(self);
         self.paths = false;
         self.derivatives = false;
-        if let Ok(part) = outcome {
+        if let Ok(part) = walk(self) {
             return Some(part);
         }
         self.tree.exprs.truncate(marks.0);
@@ -208,14 +257,14 @@ impl<'t> Reader<'t> {
         None
     }
 
-    fn equation(&mut self) -> Outcome<Equation> {
+    fn equation(&mut self, item: &Item) -> Outcome<Equation> {
         self.derivatives = true;
-        let left = self.declared()?;
-        let derivative = self.accept(Rule::prime).is_some();
+        let (left, derivative) = self.any_name()?;
+        self.check_name(left, false)?;
         self.accept(Rule::equals);
-        let right = self.expression()?;
-        let end = self.expr(right.id).span.end.max(right.span.end);
-        Ok(Equation { left, derivative, right: right.id, span: Span::new(left.span.start, end) })
+        let right = self.expression()?.id;
+        let span = Span::new(item.start + self.base, item.end + self.base);
+        Ok(Equation { left, derivative, right, span })
     }
 
     fn setting(&mut self) -> Outcome<Setting> {
@@ -230,7 +279,7 @@ impl<'t> Reader<'t> {
 
     /// The next event.
     pub(super) fn event(&self) -> Event {
-        self.events.get(self.next).copied().unwrap_or(NO_EVENT)
+        self.events.row.get(self.next).copied().unwrap_or(NO_EVENT)
     }
 
     /// Takes the next event.
@@ -247,7 +296,7 @@ impl<'t> Reader<'t> {
 
     /// The place of the event that was taken last.
     pub(super) fn last_end(&self) -> u32 {
-        let event = self.events.get(self.next - 1).copied().unwrap_or(NO_EVENT);
+        let event = self.events.row.get(self.next - 1).copied().unwrap_or(NO_EVENT);
         event.at.wrapping_add(self.offset)
     }
 
@@ -297,64 +346,85 @@ impl<'t> Reader<'t> {
         self.tree.expr(id)
     }
 
-    /// A text without its quotation marks.
+    /// The text that begins next, if one does, without its quotation marks.
     pub(super) fn description(&mut self) -> Option<Span> {
-        self.accept(Rule::text).map(|span| Span::new(span.start + 1, span.end - 1))
+        self.accept(Rule::text)
     }
 
-    /// A name that is looked up.
-    pub(super) fn name(&mut self) -> Outcome<Name> {
+    /// The name that begins next, and whether it is a derivative `x'`, its prime left out.
+    pub(super) fn any_name(&mut self) -> Outcome<(Name, bool)> {
         let begin = self.take();
-        let name = if self.begins(Rule::index) {
+        let mut name = if self.begins(Rule::index) {
             self.template(begin.at)?
         } else {
             Name { span: self.span(begin.at, self.event().at), template: TemplateId::NONE }
         };
         self.take();
-        self.check_path(name)?;
-        if name.template == TemplateId::NONE && is_reserved(self.slice(name.span)) {
-            return self.fail(reserved(name.span, self.slice(name.span)));
+        let prime = self.slice(name.span).ends_with('\'');
+        if prime {
+            if !self.derivatives {
+                return self.fail(no_derivative(name.span));
+            }
+            name.span.end -= 1;
         }
+        Ok((name, prime))
+    }
+
+    /// A name that is looked up, or one that is declared.
+    pub(super) fn name(&mut self) -> Outcome<Name> {
+        let (name, prime) = self.any_name()?;
+        if prime {
+            return self.fail(no_derivative(name.span));
+        }
+        self.check_name(name, false)?;
         Ok(name)
     }
 
-    /// Tells a path where none may stand.
-    pub(super) fn check_path(&mut self, name: Name) -> Outcome<()> {
-        let text = self.slice(name.span);
-        if !self.paths && text.contains('.') {
-            return self.fail(no_path(name.span, text));
-        }
-        Ok(())
-    }
-
-    /// The pieces of a name with indices, up to the end of the name.
-    pub(super) fn template(&mut self, start: u32) -> Outcome<Name> {
-        let mut pieces = Vec::new();
-        let mut from = start;
-        while self.begins(Rule::index) {
-            let begin = self.take();
-            if from < begin.at {
-                pieces.push(Piece::Text(self.span(from, begin.at)));
-            }
-            pieces.push(Piece::Index(self.expression()?.id));
-            self.accept(Rule::index_end);
-            from = self.take().at;
-        }
-        let end = self.event().at;
-        if from < end {
-            pieces.push(Piece::Text(self.span(from, end)));
-        }
-        let template = TemplateId(self.tree.templates.len() as u32);
-        self.tree.templates.push(pieces.into());
-        Ok(Name { span: self.span(start, end), template })
-    }
-
-    /// A name that is declared or driven: no path, and none of the reserved ones.
+    /// A declared name, which is no path.
     pub(super) fn declared(&mut self) -> Outcome<Name> {
         let paths = std::mem::replace(&mut self.paths, false);
         let name = self.name();
         self.paths = paths;
         name
+    }
+
+    /// Tells a path or a reserved name where none may stand; with `in_law`, `s`, `z` and `pi` may.
+    pub(super) fn check_name(&mut self, name: Name, in_law: bool) -> Outcome<()> {
+        let text = self.slice(name.span);
+        if !self.paths && text.contains('.') {
+            return self.fail(no_path(name.span, text));
+        }
+        if is_reserved(text) && !(in_law && matches!(text, "s" | "z" | "pi")) {
+            return self.fail(reserved(name.span, text));
+        }
+        Ok(())
+    }
+
+    /// The pieces of a name with indices, up to the end of the name.
+    fn template(&mut self, start: u32) -> Outcome<Name> {
+        let mut pieces = Vec::new();
+        let mut from = start;
+        while self.begins(Rule::index) {
+            // The index begins after its `{` and ends before its `}`.
+            let brace = self.take().at - 1;
+            if from < brace {
+                pieces.push(Piece::Text(self.span(from, brace)));
+            }
+            pieces.push(Piece::Index(self.expression()?.id));
+            self.take();
+            let end = self.last_end();
+            let blanks = self.text.get((end - self.base) as usize..).map_or(0, |t| t.find('}').unwrap_or(0));
+            from = (end - self.offset) + blanks as u32 + 1;
+        }
+        let end = self.event().at;
+        // A prime is no part of the name.
+        let prime = u32::from(self.slice(self.span(from, end)).ends_with('\''));
+        if from + prime < end {
+            pieces.push(Piece::Text(self.span(from, end - prime)));
+        }
+        let template = TemplateId(self.tree.templates.len() as u32);
+        self.tree.templates.push(pieces.into());
+        Ok(Name { span: self.span(start, end), template })
     }
 
     /// A declared name without indices.
@@ -366,16 +436,14 @@ impl<'t> Reader<'t> {
         Ok(span)
     }
 
-    /// A list of names.
+    /// The names, separated by commas, that begin next.
     pub(super) fn names(&mut self) -> Outcome<Box<[Name]>> {
         let first = self.names.len();
-        self.enter(Rule::names);
         while self.begins(Rule::name) {
             let name = self.name()?;
             self.names.push(name);
             self.accept(Rule::comma);
         }
-        self.take();
         let names = self.names[first..].into();
         self.names.truncate(first);
         Ok(names)
@@ -383,12 +451,7 @@ impl<'t> Reader<'t> {
 
     /// The unit in brackets that begins next, if one does: its place in [`Tree::units`].
     pub(super) fn unit(&mut self) -> Outcome<Option<u32>> {
-        if !self.enter(Rule::unit) {
-            return Ok(None);
-        }
-        let inside = self.leaf();
-        self.accept(Rule::unit_end);
-        self.take();
+        let Some(inside) = self.accept(Rule::unit) else { return Ok(None) };
         let text = self.slice(inside);
         if !self.known_units.contains(text) {
             if let Err(failure) = super::unit::read_unit(text) {
@@ -436,16 +499,33 @@ impl<'t> Reader<'t> {
     }
 }
 
-/// An item whose first word is misspelt, with the word that was meant, and by how much that moves what follows.
-fn corrected(item: &Item, text: &str) -> Option<(String, i32)> {
-    let (ItemKind::Line(word) | ItemKind::Head(word)) = item.kind else { return None };
+/// Whether the lines that were read are the items of a run, each within its own bounds.
+fn fits(lines: &[Extent], run: &[Item]) -> bool {
+    let Some(first) = run.first() else { return lines.is_empty() };
+    let after = run.iter().skip(1).map(|item| item.start).chain(std::iter::once(u32::MAX));
+    lines.len() == run.len()
+        && lines.iter().zip(run).zip(after).all(|((line, item), next)| {
+            let (start, end) = (line.start + first.start, line.end + first.start);
+            let rule = match item.kind {
+                ItemKind::Line(word) | ItemKind::Head(word) => word.rule(),
+                ItemKind::Close => Rule::body_end,
+                _ => Rule::assignment,
+            };
+            line.rule == rule && item.start <= start && start <= item.end && item.end <= end && end <= next
+        })
+}
+
+/// The text of an item, a misspelt first word replaced by the word that was meant, and by how much what follows has to be
+/// moved to be in its place again.
+fn corrected<'t>(item: &Item, text: Cow<'t, str>) -> (Cow<'t, str>, i32) {
+    let (ItemKind::Line(word) | ItemKind::Head(word)) = item.kind else { return (text, 0) };
     let word = word.text();
-    if text.starts_with(word) {
-        return None;
+    let written = explain::token_length(&text);
+    if text.get(..written) == Some(word) {
+        return (text, 0);
     }
-    let written = explain::token_length(text);
-    let corrected = format!("{word}{}", text.get(written..)?);
-    Some((corrected, written as i32 - word.len() as i32))
+    let corrected = format!("{word}{}", text.get(written..).unwrap_or(""));
+    (Cow::Owned(corrected), written as i32 - word.len() as i32)
 }
 
 /// The diagnostic for a reserved word in a name's place.
@@ -459,6 +539,12 @@ pub(super) fn reserved(span: Span, name: &str) -> Diagnostic {
     Diagnostic::new(Code::Syntax, format!("`{name}` is reserved and can't be a name here"))
         .label(span, why)
         .help(format!("choose another name, such as `{name}_1`"))
+}
+
+fn no_derivative(span: Span) -> Diagnostic {
+    Diagnostic::new(Code::Syntax, "a derivative can't stand here")
+        .label(span, "`'` is for state equations")
+        .help("in a law, the derivative of a signal is `s` times it")
 }
 
 fn no_path(span: Span, path: &str) -> Diagnostic {

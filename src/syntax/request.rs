@@ -12,7 +12,6 @@ use crate::source::Span;
 impl Reader<'_> {
     /// The events of `find`.
     pub(super) fn find(&mut self) -> Outcome<StatementKind> {
-        self.enter(Rule::find_tail);
         self.paths = true;
         let mut requests = Vec::new();
         loop {
@@ -20,16 +19,13 @@ impl Reader<'_> {
             let kind = if self.accept(Rule::find_all).is_some() {
                 RequestKind::All
             } else if self.enter(Rule::find_loop) {
-                self.accept(Rule::loop_word);
-                self.accept(Rule::at_word);
-                let at = self.names_in_group()?;
+                let at = self.listed()?;
                 self.take();
                 RequestKind::Loop { at }
             } else if self.enter(Rule::find_zeros) {
-                self.accept(Rule::zeros_word);
-                let to = self.names_in_group()?;
+                let to = self.listed()?;
                 self.accept(Rule::slash);
-                let from = self.names_in_group()?;
+                let from = self.listed()?;
                 self.take();
                 RequestKind::Zeros { to, from }
             } else {
@@ -62,10 +58,11 @@ impl Reader<'_> {
         Span::new(start, start + text.trim_end().len() as u32)
     }
 
-    fn names_in_group(&mut self) -> Outcome<Box<[Name]>> {
-        self.accept(Rule::open);
+    /// The list of names that begins next.
+    fn listed(&mut self) -> Outcome<Box<[Name]>> {
+        self.enter(Rule::names);
         let names = self.names()?;
-        self.accept(Rule::close);
+        self.take();
         Ok(names)
     }
 
@@ -85,20 +82,19 @@ impl Reader<'_> {
         loop {
             let place = self.event().at;
             let twice = if self.enter(Rule::with_open) {
-                self.accept(Rule::with_word);
                 let twice = !clauses.open.is_empty();
-                clauses.open = self.names()?;
+                clauses.open = self.listed()?;
                 self.accept(Rule::open_word);
                 twice
             } else if self.enter(Rule::keep) {
-                self.accept(Rule::keep_word);
                 let twice = clauses.keep != Keep::Nothing;
-                let names = self.names()?;
+                let names = self.listed()?;
                 clauses.keep = if self.is_all(&names) { Keep::All } else { Keep::Names(names) };
                 twice
             } else if self.enter(Rule::in_cases) {
                 let twice = clauses.cases != Cases::Nominal;
-                let names = self.names()?;
+                self.accept(Rule::in_word);
+                let names = self.listed()?;
                 clauses.cases = if self.is_all(&names) { Cases::All } else { Cases::Names(self.case_names(&names)?) };
                 twice
             } else {
@@ -135,7 +131,6 @@ impl Reader<'_> {
         let metric = self.leaf();
         self.paths = true;
         let subject = if self.enter(Rule::at) {
-            self.accept(Rule::at_word);
             let name = self.name()?;
             self.take();
             Subject::At(name)
@@ -147,7 +142,6 @@ impl Reader<'_> {
         };
         let over = self.band()?;
         let to = if self.enter(Rule::to) {
-            self.accept(Rule::to_word);
             let value = self.expression()?.id;
             self.take();
             Some(value)
@@ -155,7 +149,6 @@ impl Reader<'_> {
             None
         };
         let stimulus = if self.enter(Rule::stimulus) {
-            self.accept(Rule::for_word);
             let word = self.leaf();
             self.take();
             Some(word)
@@ -183,7 +176,6 @@ impl Reader<'_> {
         if !self.enter(Rule::over) {
             return Ok(None);
         }
-        self.accept(Rule::over_word);
         let (from, to) = self.range()?;
         self.take();
         let span = Span::new(from.span.start, to.end);

@@ -49,6 +49,8 @@ pub(super) struct Item {
     pub(super) start: u32,
     /// Byte position after its last byte.
     pub(super) end: u32,
+    /// Whether the grammar may read it among others: nothing is wrong with it so far.
+    pub(super) sound: bool,
 }
 
 /// A text in pieces.
@@ -111,6 +113,7 @@ enum Class {
     Digit,
     Quote,
     Hash,
+    Control,
     Open,
     Close,
     BraceOpen,
@@ -129,6 +132,7 @@ const CLASSES: [Class; 256] = {
             b'\n' => Class::LineEnd,
             b'a'..=b'z' | b'A'..=b'Z' | b'_' | 128..=255 => Class::Name,
             b'0'..=b'9' => Class::Digit,
+            0..=31 | 127 => Class::Control,
             b'"' => Class::Quote,
             b'#' => Class::Hash,
             b'(' | b'[' => Class::Open,
@@ -160,6 +164,9 @@ pub(super) fn split(text: &str, base: u32) -> Split {
         brackets: Vec::new(),
         strict: false,
         after_body: false,
+        sound: true,
+        lost: false,
+        quiet: false,
     };
     splitter.run();
     splitter.out
@@ -178,6 +185,12 @@ struct Splitter<'t> {
     strict: bool,
     /// Whether a body has been closed on this line.
     after_body: bool,
+    /// Whether the current item stands in the text as it should.
+    sound: bool,
+    /// Whether the grammar can't read the current statement, for a mistake that has been told.
+    lost: bool,
+    /// Whether enough has been told of the current statement: nobody knows what it is.
+    quiet: bool,
 }
 
 impl Splitter<'_> {
@@ -203,11 +216,20 @@ impl Splitter<'_> {
     }
 
     fn push(&mut self, kind: ItemKind, start: usize, end: usize) {
-        self.out.items.push(Item { kind, start: start as u32, end: end as u32 });
+        let sound = self.sound && !matches!(kind, ItemKind::Lost | ItemKind::LostHead);
+        self.out.items.push(Item { kind, start: start as u32, end: end as u32, sound });
     }
 
     fn tell(&mut self, diagnostic: Diagnostic) {
         self.out.diagnostics.push(diagnostic);
+    }
+
+    /// Tells a mistake after which the grammar can't read the statement.
+    fn lose(&mut self, diagnostic: Diagnostic) {
+        self.lost = true;
+        if !self.quiet {
+            self.tell(diagnostic);
+        }
     }
 
     fn mark(&self) -> Mark {
@@ -330,23 +352,30 @@ impl Splitter<'_> {
             None | Some(Body::Define | Body::Repeat) => self.first_word(start),
             Some(_) => None,
         };
-        let lost_before = self.out.diagnostics.len();
+        self.lost = false;
+        self.quiet = word.is_none() && !matches!(context, Some(Body::Equations | Body::Settings));
         let (end, ending) = self.find_end(start, word);
-        let lost =
-            self.out.diagnostics.len() > lost_before || (word.is_none() && self.out.diagnostics.len() > told_before);
         let kind = match (ending, context, word) {
-            (Ending::Body, _, Some(word)) => ItemKind::Head(word),
-            (Ending::Body, _, None) => ItemKind::LostHead,
+            (Ending::Body, _, Some(word)) if !self.lost => ItemKind::Head(word),
+            (Ending::Body, ..) => ItemKind::LostHead,
             (_, Some(Body::Unknown), _) => ItemKind::Lost,
-            _ if lost => ItemKind::Lost,
+            _ if self.lost => ItemKind::Lost,
             (_, Some(Body::Equations), _) => ItemKind::Equation,
             (_, Some(Body::Settings), _) => ItemKind::Setting,
             (_, _, Some(word)) => ItemKind::Line(word),
             (_, _, None) => ItemKind::Lost,
         };
-        // A head in which the splitter found a mistake still opens its body.
-        let kind = if lost && matches!(kind, ItemKind::Head(_)) { ItemKind::LostHead } else { kind };
+        if ending == Ending::Body && matches!(context, Some(Body::Equations | Body::Settings)) {
+            let brace = self.span(end - 1, end);
+            self.tell(
+                Diagnostic::new(Code::Syntax, "a body can't begin here")
+                    .label(brace, "inside another body without statements")
+                    .help("lines here are `NAME = VALUE`"),
+            );
+        }
+        self.sound = self.out.diagnostics.len() == told_before;
         self.push(kind, start, end);
+        self.sound = true;
         if ending == Ending::Body {
             self.open_body(word, context, end - 1, mark);
         }
@@ -404,7 +433,9 @@ impl Splitter<'_> {
     fn close_unclosed(&mut self, place: usize) {
         let Some(body) = self.bodies.pop() else { return };
         let (brace, here) = (self.span(body.brace, body.brace + 1), self.span(place, place));
+        self.sound = false;
         self.push(ItemKind::Close, place, place);
+        self.sound = true;
         // Where too many are open, that has been told; one more diagnostic for each would drown it.
         if self.bodies.len() < MAX_NESTING {
             self.tell(
@@ -491,7 +522,7 @@ impl Splitter<'_> {
                     self.position += 1;
                     continue;
                 }
-                Class::Name => self.name(),
+                Class::Name => self.name(word),
                 Class::Digit => self.number(),
                 Class::Quote => self.text_in_quotes(),
                 Class::Open => {
@@ -520,6 +551,7 @@ impl Splitter<'_> {
                     }
                 }
                 Class::Semicolon => break Ending::Semicolon,
+                Class::Control => self.control(),
                 Class::Other => self.position += 1,
             }
             progress.end = self.position;
@@ -529,21 +561,48 @@ impl Splitter<'_> {
         };
         if let Some(at) = progress.too_deep {
             let at = self.span(at, at + 1);
-            self.tell(too_deep(at));
+            self.lose(too_deep(at));
         } else {
             self.tell_unclosed(progress.end);
         }
         (progress.end, ending)
     }
 
+    /// Takes a control character, which stands nowhere.
+    fn control(&mut self) {
+        let span = self.span(self.position, self.position + 1);
+        let code = self.bytes[self.position];
+        self.lose(
+            Diagnostic::new(Code::Syntax, "a control character can't stand in a statement")
+                .label(span, format!("the character with the number {code}"))
+                .help("take it out, or put a space in its place"),
+        );
+        self.position += 1;
+    }
+
     /// Takes a name; a `{` that touches it opens an index.
-    fn name(&mut self) {
+    fn name(&mut self, word: Option<Word>) {
         let rest = &self.bytes[self.position..];
         self.position += rest.iter().take_while(|&&b| matches!(class(b), Class::Name | Class::Digit)).count();
         if self.bytes.get(self.position) == Some(&b'{') {
-            self.brackets.push((self.position, b'{'));
-            self.position += 1;
+            if word == Some(Word::Case) {
+                // A case's name has no index, so a body is meant; it is read as one.
+                self.tell_touching(self.position);
+            } else {
+                self.brackets.push((self.position, b'{'));
+                self.position += 1;
+            }
         }
+    }
+
+    /// Tells that the `{` at `at` should begin a body.
+    fn tell_touching(&mut self, at: usize) {
+        let span = self.span(at, at + 1);
+        self.tell(
+            Diagnostic::new(Code::Syntax, "a `{` that touches a name is an index")
+                .label(span, "a body is meant")
+                .help("put a space before the `{` of a body"),
+        );
     }
 
     /// Takes a number with its exponent, so that the `{` after `1..1e3{` touches no name.
@@ -588,7 +647,7 @@ impl Splitter<'_> {
                     let (here, there) = (self.span(self.position, self.position + 1), self.span(at, at + 1));
                     let (byte, open) = (char::from(byte), char::from(open));
                     let wanted = closing(open);
-                    self.tell(
+                    self.lose(
                         Diagnostic::new(Code::Syntax, format!("`{byte}` does not close `{open}`"))
                             .label(here, format!("`{wanted}` expected"))
                             .label(there, "opened here")
@@ -606,12 +665,9 @@ impl Splitter<'_> {
             // An index stands on one line. A lone `{` at the end of a first line was meant to begin a body.
             let takes_body = matches!(word, Some(Word::Block | Word::Define | Word::Repeat | Word::Case));
             if at + 1 == end && self.brackets.len() == 1 && takes_body {
-                let span = self.span(at, at + 1);
-                self.tell(
-                    Diagnostic::new(Code::Syntax, "a `{` that touches a name is an index")
-                        .label(span, "a body is meant")
-                        .help("put a space before the `{` of a body"),
-                );
+                self.tell_touching(at);
+                // The grammar takes it for an index after the name of an output.
+                self.lost = word == Some(Word::Block);
                 self.brackets.clear();
                 return false;
             }
@@ -641,7 +697,7 @@ impl Splitter<'_> {
             ),
         };
         let (here, there) = (self.span(at, at + 1), self.span(end, end));
-        self.tell(
+        self.lose(
             Diagnostic::new(Code::Syntax, message)
                 .label(here, format!("this `{open}` has no `{wanted}`"))
                 .label(there, format!("`{wanted}` expected here at the latest"))

@@ -53,6 +53,7 @@ impl Reader<'_> {
             Word::Define => self.define(),
             Word::Repeat => {
                 let index = self.identifier()?;
+                self.accept(Rule::in_word);
                 let (from, to) = self.whole_range()?;
                 Ok(StatementKind::Repeat(Box::new(Repeat { index, from: from.id, to: to.id, body: Vec::new() })))
             }
@@ -70,12 +71,7 @@ impl Reader<'_> {
         let name = self.declared()?;
         let unit = self.unit()?;
         let value = self.value_after_equals()?;
-        let within = if self.enter(Rule::within) {
-            self.accept(Rule::within_word);
-            Some(self.within()?)
-        } else {
-            None
-        };
+        let within = if self.enter(Rule::within) { Some(self.within()?) } else { None };
         let description = self.description();
         Ok(StatementKind::Param(Box::new(Param { name, unit, value, within, description })))
     }
@@ -119,7 +115,6 @@ impl Reader<'_> {
                 BlockBody::Law(self.expression()?.id)
             };
             if self.enter(Rule::every) {
-                self.accept(Rule::every_word);
                 every = Some(self.expression()?.id);
                 self.take();
             }
@@ -133,20 +128,16 @@ impl Reader<'_> {
 
     fn matrix(&mut self) -> Outcome<Box<[Box<[ExprId]>]>> {
         let mut rows = Vec::new();
-        self.accept(Rule::row_open);
         while self.enter(Rule::row) {
-            self.accept(Rule::row_open);
             let mut row = Vec::new();
             while self.begins(Rule::expression) {
                 row.push(self.expression()?.id);
                 self.accept(Rule::comma);
             }
-            self.accept(Rule::row_close);
             self.take();
             rows.push(row.into());
             self.accept(Rule::comma);
         }
-        self.accept(Rule::row_close);
         self.take();
         Ok(rows.into())
     }
@@ -155,7 +146,7 @@ impl Reader<'_> {
         let name = self.identifier()?;
         self.accept(Rule::open);
         let mut params = Vec::new();
-        while self.enter(Rule::define_param) {
+        while self.enter(Rule::parameter) {
             let name = self.identifier()?;
             let unit = self.unit()?;
             let default = self.value_after_equals()?;
@@ -179,7 +170,6 @@ impl Reader<'_> {
 
     fn ports(&mut self) -> Outcome<Box<[Port]>> {
         let mut ports = Vec::new();
-        self.enter(Rule::ports);
         while self.enter(Rule::port) {
             let name = self.identifier()?;
             let unit = self.unit()?;
@@ -187,7 +177,6 @@ impl Reader<'_> {
             self.take();
             self.accept(Rule::comma);
         }
-        self.take();
         Ok(ports.into())
     }
 }

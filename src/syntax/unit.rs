@@ -1,7 +1,7 @@
 //! The shape of a unit's text; what its symbols mean is no business of this room.
 
 use super::ast::UnitExpr;
-use super::grammar::{self, Event, Failure, Rule};
+use super::grammar::{self, Event, Events, Failure, Rule};
 use super::split::MAX_NESTING;
 use crate::source::Span;
 
@@ -14,14 +14,14 @@ pub fn parse_unit(text: &str) -> Option<UnitExpr> {
 /// [`parse_unit`] with the place where the text leaves the grammar.
 pub(super) fn read_unit(text: &str) -> Result<UnitExpr, Failure> {
     // The grammar is recursive over parentheses; products are boxes in boxes, which are dropped recursively.
-    let at = |at: usize| Failure { at, expected: Vec::new() };
+    let at = |at: usize| Failure { at, expected: Vec::new(), stack_full: false };
     let signs = text.bytes().filter(|b| matches!(b, b'(' | b'*' | b'/')).count();
     if signs > MAX_NESTING {
         return Err(at(0));
     }
-    let mut events = Vec::new();
+    let mut events = Events::default();
     grammar::read(Rule::unit_text, text, &mut events)?;
-    let mut reader = Reader { text, events: &events, next: 1 };
+    let mut reader = Reader { text, events: &events.row, next: 1 };
     reader.product().ok_or_else(|| at(0))
 }
 
@@ -65,15 +65,16 @@ impl Reader<'_> {
                 UnitExpr::One
             }
             _ => {
-                self.next += 1;
+                self.next += 2;
                 let inside = self.product()?;
-                self.next += 1;
+                self.next += 2;
                 inside
             }
         };
         if self.peek() == Some((Rule::unit_exponent, true)) {
             let span = self.leaf()?;
-            let exponent = self.text.get(span.start as usize..span.end as usize)?.parse().ok()?;
+            let sign = self.text.get(span.start as usize..span.end as usize)?;
+            let exponent = sign.trim_start_matches('^').trim_start().parse().ok()?;
             return Some(UnitExpr::Pow(Box::new(factor), exponent));
         }
         Some(factor)

@@ -32,11 +32,9 @@ impl Word {
     pub(super) fn rule(self) -> Rule {
         match self {
             Self::Model => Rule::model,
-            Self::Use => Rule::uses,
+            Self::Use => Rule::use_file,
             Self::Param => Rule::param,
-            Self::Input => Rule::input,
-            Self::Output => Rule::output,
-            Self::Signal => Rule::signal,
+            Self::Input | Self::Output | Self::Signal => Rule::signal,
             Self::Sum => Rule::sum,
             Self::Block => Rule::block,
             Self::Define => Rule::define,
@@ -44,7 +42,7 @@ impl Word {
             Self::Case => Rule::case,
             Self::Find => Rule::find,
             Self::Require => Rule::require,
-            Self::Unit => Rule::units,
+            Self::Unit => Rule::unit_of_own,
         }
     }
 }

@@ -1,1 +1,0 @@
-//! Tests of the whole room: texts in, trees and diagnostics out.
