@@ -1,9 +1,9 @@
 //! Exact solutions of systems of linear equations whose coefficients are polynomials.
 //!
 //! Three steps: unknowns with a pivot ±1 in a sparse row or column are eliminated as they stand; then, where symbols
-//! occur, minors over sets of columns give determinant and numerators without any division ([`minors`]); systems in one
-//! variable, and symbolic ones in which few terms meet in long coefficients, go by fraction-free elimination
-//! ([`bareiss`]).
+//! occur, minors over sets of columns give determinant and numerators without any division ([`minors`]); small systems in
+//! one variable, and symbolic ones in which few terms meet in long coefficients, go by fraction-free elimination
+//! ([`bareiss`]). Larger systems in the main variable alone go to [`super::modular`] as they stand.
 
 mod bareiss;
 mod condense;
@@ -12,8 +12,11 @@ mod terms;
 #[cfg(test)]
 mod tests;
 
-use super::Poly;
+use super::{IBig, Poly, Var, modular};
 pub use minors::{MAX_COLUMNS, MAX_SETS, MAX_TERMS};
+
+/// From as many rows on, systems in the main variable alone go to [`modular`]; below, its set-up costs more.
+const MODULAR_ROWS: usize = 12;
 
 /// A square system A x = b, by its rows; each row lists (column, coefficient), columns rising, no zeros.
 #[derive(Clone, Debug, Default)]
@@ -36,7 +39,7 @@ pub enum SolveError {
 pub struct Solution {
     /// One for each wanted unknown.
     pub numerators: Vec<Poly>,
-    /// det A, up to a sign that it shares with the numerators; the factors that `numerators` and it have in common
+    /// det A, up to a number that it shares with the numerators; the factors that `numerators` and it have in common
     /// are not cancelled.
     pub determinant: Poly,
 }
@@ -78,6 +81,11 @@ impl System {
     /// As [`Self::solve`].
     pub fn solve_many(&self, rights: &[&[(usize, Poly)]], wanted: &[usize]) -> Result<Solutions, SolveError> {
         let n = self.rows.len();
+        if n >= MODULAR_ROWS
+            && let Some(result) = modular::solve(self, rights, wanted)
+        {
+            return result.map(Solutions::from);
+        }
         let mut rows = self.rows.clone();
         for (k, right) in rights.iter().enumerate() {
             let mut values: Vec<(usize, Poly)> = right.to_vec();
@@ -103,7 +111,7 @@ impl System {
         Ok(all)
     }
 
-    /// det A; 0 for a singular system.
+    /// det A, up to a number other than 0; 0 for a singular system.
     ///
     /// # Errors
     ///
@@ -113,6 +121,16 @@ impl System {
             Ok(all) => Ok(all.determinant),
             Err(SolveError::Singular) => Ok(Poly::zero()),
             Err(limit) => Err(limit),
+        }
+    }
+}
+
+impl From<modular::Exact> for Solutions {
+    fn from(exact: modular::Exact) -> Self {
+        let poly = |p: &Vec<IBig>| Poly::from_dense(Var::S, p);
+        Self {
+            numerators: exact.numerators.iter().map(|r| r.iter().map(poly).collect()).collect(),
+            determinant: poly(&exact.determinant),
         }
     }
 }

@@ -40,6 +40,8 @@ use sparse::{Condensed, Functional};
 
 /// Further primes that must change nothing.
 pub const SPARE: usize = 2;
+/// Degrees beyond this are left to the caller: the work grows with their square for each of as many primes.
+pub const MAX_STATES: usize = 1 << 14;
 /// Bits that each prime surely has.
 const PRIME_BITS: f64 = 49.9;
 /// Primes modulo which the determinant must vanish before it is said to be 0.
@@ -58,13 +60,16 @@ pub struct Exact {
 }
 
 /// Solves A x = b for several right sides and some unknowns, where [`super::Var::S`] is the only variable: `None` where it
-/// is not. A has no empty rows beyond its columns, as in [`System::solve`].
+/// is not, or where the degree may pass [`MAX_STATES`]. A has no empty rows beyond its columns, as in [`System::solve`].
 ///
 /// # Errors
 ///
 /// [`SolveError::Singular`] where det A = 0 (modulo three primes of 62 bits at more points than its degree).
 pub fn solve(system: &System, rights: &[&[(usize, Poly)]], wanted: &[usize]) -> Option<Result<Exact, SolveError>> {
     let (rows, factor) = sparse::read(system, rights)?;
+    if points::degrees(&rows).0 > MAX_STATES {
+        return None;
+    }
     Some(solve_rows(rows, factor, rights.len(), wanted))
 }
 
