@@ -6,6 +6,7 @@
 //! that has all the variables. Primes and points are fixed, so the same input takes the same way.
 
 pub(crate) mod dense;
+mod heuristic;
 pub(crate) mod images;
 pub(crate) mod remainders;
 #[cfg(test)]
@@ -90,9 +91,7 @@ fn primitive(a: &Poly, b: &Poly) -> Poly {
         return Poly::one();
     }
     if keep.len() < a.fields().len() || keep.len() < b.fields().len() {
-        let mut parts = pieces(a, &keep);
-        parts.extend(pieces(b, &keep));
-        return of_many(parts);
+        return of_pieces(a, b, &keep, &bounds);
     }
     for (p, q) in [(a, b), (b, a)] {
         if bounds.iter().all(|&(v, d)| d == q.degree_of(v)) && p.div_exact(q).is_some() {
@@ -102,24 +101,48 @@ fn primitive(a: &Poly, b: &Poly) -> Poly {
     let (mut x, mut y) = (a.clone(), b.clone());
     let powers: Vec<(Var, u64)> = keep.iter().map(|&v| (v, deflate(&mut x, &mut y, v))).collect();
     let bounds: Vec<(Var, u64)> = bounds.iter().zip(&powers).map(|(b, p)| (b.0, b.1 / p.1)).collect();
-    let g = remainders::gcd(&x, &y, &bounds);
+    let g = heuristic::gcd(&x, &y).unwrap_or_else(|| remainders::gcd(&x, &y, &bounds));
     powers.into_iter().fold(g, |g, (var, k)| if k == 1 { g } else { g.with_exponents(var, |e| e * k) })
+}
+
+/// The divisor of two that has only the variables in `keep`: it divides all coefficients of both, as polynomials in the
+/// other variables. As soon as a few of these have a divisor of the degrees expected, divisions decide.
+fn of_pieces(a: &Poly, b: &Poly, keep: &[Var], bounds: &[(Var, u64)]) -> Poly {
+    let mut parts = pieces(a, keep);
+    parts.extend(pieces(b, keep));
+    parts.sort_by_key(|p| (p.variables().len(), p.len()));
+    let mut out = Poly::zero();
+    let mut refused = false;
+    for p in parts {
+        out = gcd(&out, &p).primitive();
+        if out.is_constant() {
+            return Poly::one();
+        }
+        let expected = keep.iter().all(|&v| bounds.iter().any(|b| b.0 == v && b.1 == out.degree_of(v)));
+        if expected && !refused {
+            if a.div_exact(&out).is_some() && b.div_exact(&out).is_some() {
+                return out;
+            }
+            refused = true;
+        }
+    }
+    out
 }
 
 /// Coefficients as a polynomial in all variables but these.
 fn pieces(p: &Poly, keep: &[Var]) -> Vec<Poly> {
-    let mut parts = vec![p.clone()];
-    for v in p.variables() {
-        if !keep.contains(&v) {
-            parts = parts.iter().flat_map(|q| q.powers(v)).map(|(_, c)| c).collect();
-        }
+    let w = words(p.fields());
+    let mut mask = vec![0; w];
+    for f in p.fields().iter().filter(|f| !keep.contains(&f.var)) {
+        mask[f.word as usize] |= f.in_word();
     }
-    parts
-}
-
-/// The primitive divisor of many, the shortest first.
-fn of_many(parts: Vec<Poly>) -> Poly {
-    of_coefficients(parts).primitive()
+    if mask.iter().all(|m| *m == 0) {
+        return vec![p.clone()];
+    }
+    let other = |i: usize| p.key(i).iter().zip(&mask).map(|(k, m)| k & m);
+    let mut order: Vec<usize> = (0..p.len()).collect();
+    order.sort_by(|&i, &j| other(i).cmp(other(j)));
+    order.chunk_by(|&i, &j| other(i).eq(other(j))).map(|group| p.selected(group, |v| keep.contains(&v))).collect()
 }
 
 /// The divisor of many with its number.

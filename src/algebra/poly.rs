@@ -282,6 +282,22 @@ impl Poly {
         let coefficients = self.coefficients.divided(by)?;
         Some(Self { fields: self.fields.clone(), keys: self.keys.clone(), coefficients })
     }
+    /// The same with every coefficient changed; those that become 0 go.
+    pub(crate) fn map_values(&self, change: impl Fn(IBig) -> IBig) -> Self {
+        let values: Vec<IBig> = self.coefficients.iter().map(change).collect();
+        let w = words(&self.fields);
+        if values.iter().all(|c| *c != IBig::ZERO) {
+            let coefficients = Coefficients::from_big(values);
+            return Self { fields: self.fields.clone(), keys: self.keys.clone(), coefficients };
+        }
+        let mut keys = Vec::new();
+        let mut kept = Vec::new();
+        for (i, c) in values.into_iter().enumerate().filter(|(_, c)| *c != IBig::ZERO) {
+            keys.extend_from_slice(&self.keys[i * w..(i + 1) * w]);
+            kept.push(c);
+        }
+        Self::normalized(self.fields.clone(), keys, Coefficients::from_big(kept))
+    }
     /// Greatest common divisor of the coefficients, not negative.
     pub fn content(&self) -> IBig {
         self.coefficients.content()

@@ -40,7 +40,7 @@ proptest! {
     }
 }
 
-/// sympy 1.14, factor_list.
+/// python-flint 0.9.0, fmpz_poly.factor.
 #[test]
 fn irreducible_factors_in_one_variable() {
     // x^24 - 1: the cyclotomic polynomials of the divisors of 24.

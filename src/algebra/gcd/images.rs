@@ -61,6 +61,8 @@ fn chunks(p: &Poly, prime: &Prime, point: &impl Fn(Var) -> u64) -> Vec<Chunk> {
 
 /// For each variable of `p`, its image with `point` for all other variables, from the power 0 up; `None` where the
 /// degree is too large for a list.
+///
+/// Variables whose point is 0 get no image; terms that have them are passed over.
 pub(crate) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec<(Var, Option<Vec<u64>>)> {
     let mut chunks = chunks(p, prime, &point);
     let power = |c: &Chunk, value: u64| match c.products.get(value as usize) {
@@ -68,6 +70,11 @@ pub(crate) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec
         None => prime.pow(c.fields[0].1, value),
     };
     let w = words(p.fields());
+    let mut absent = vec![0; w];
+    for f in p.fields().iter().filter(|f| point(f.var) == 0) {
+        absent[f.word as usize] |= f.in_word();
+    }
+    let present = |key: &[u64]| key.iter().zip(&absent).all(|(k, a)| k & a == 0);
     let mut visit = |key: &[u64], c: u64| {
         let mut t = c;
         for chunk in &chunks {
@@ -84,14 +91,16 @@ pub(crate) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec
     let residue = |c: i64| known.get(c.wrapping_add(64) as usize).copied().unwrap_or_else(|| prime.of_signed(c));
     match p.values() {
         Coefficients::Small(c) => {
-            p.keys().chunks_exact(w).zip(c).for_each(|(key, &c)| visit(key, residue(c)));
+            p.keys().chunks_exact(w).zip(c).filter(|t| present(t.0)).for_each(|(key, &c)| visit(key, residue(c)));
         }
-        Coefficients::Big(c) => p.keys().chunks_exact(w).zip(c).for_each(|(key, c)| visit(key, prime.of_big(c))),
+        Coefficients::Big(c) => {
+            p.keys().chunks_exact(w).zip(c).filter(|t| present(t.0)).for_each(|(key, c)| visit(key, prime.of_big(c)));
+        }
     }
     let mut out = Vec::new();
     for chunk in &chunks {
         for (f, x) in &chunk.fields {
-            if f.degree > LONGEST_IMAGE {
+            if f.degree > LONGEST_IMAGE || *x == 0 {
                 out.push((f.var, None));
                 continue;
             }
@@ -119,22 +128,44 @@ pub(crate) fn images(p: &Poly, prime: &Prime, point: impl Fn(Var) -> u64) -> Vec
 /// An image at a point where the leading coefficient of `a` or of `b` doesn't vanish keeps the divisor's degree, so the
 /// image's own divisor has at least that one.
 pub(super) fn degree_bounds(a: &Poly, b: &Poly) -> Vec<(Var, u64)> {
+    let least = |v: Var| a.degree_of(v).min(b.degree_of(v));
+    let mut bounds: Vec<(Var, u64)> =
+        a.variables().into_iter().filter(|&v| b.degree_of(v) > 0).map(|v| (v, least(v))).collect();
+    if a.len().max(b.len()) > LONG {
+        // With 0 for a few variables few terms are left, and mostly they prove enough. Variables that only the longer
+        // one has leave the shorter one as it is.
+        let (short, long) = if a.len() > b.len() { (b, a) } else { (a, b) };
+        let own: Vec<Var> = long.variables().into_iter().filter(|&v| short.degree_of(v) == 0).collect();
+        for candidates in [own, long.variables()] {
+            let zeros: Vec<Var> = candidates.into_iter().filter(|v| *v != Var::S).skip(1).step_by(ZERO_STEP).collect();
+            if !zeros.is_empty() && bounds.iter().any(|b| b.1 > 0) {
+                improve(&mut bounds, a, b, &zeros);
+            }
+        }
+    }
+    if bounds.iter().any(|b| b.1 > 0) {
+        improve(&mut bounds, a, b, &[]);
+    }
+    bounds
+}
+
+/// Polynomials of more terms are first looked at with 0 for some variables.
+const LONG: usize = 4_000;
+
+/// Every so many variables one is 0.
+const ZERO_STEP: usize = 5;
+
+/// Lowers bounds by images at one point.
+fn improve(bounds: &mut [(Var, u64)], a: &Poly, b: &Poly, zeros: &[Var]) {
     let prime = Prime::first();
-    let point = |v: Var| prime.scattered(u64::from(v.0));
+    let point = |v: Var| if zeros.contains(&v) { 0 } else { prime.scattered(u64::from(v.0)) };
     let (x, y) = (images(a, &prime, point), images(b, &prime, point));
-    a.fields()
-        .iter()
-        .filter(|f| b.field(f.var).is_some())
-        .map(|f| {
-            let least = f.degree.min(b.degree_of(f.var));
-            let find = |list: &[(Var, Option<Vec<u64>>)]| list.iter().find(|i| i.0 == f.var).and_then(|i| i.1.clone());
-            let bound = match (find(&x), find(&y)) {
-                (Some(p), Some(q)) if p.last() != Some(&0) || q.last() != Some(&0) => {
-                    least.min(residues::gcd(&prime, &p, &q).len().saturating_sub(1) as u64)
-                }
-                _ => least,
-            };
-            (f.var, bound)
-        })
-        .collect()
+    let find = |list: &[(Var, Option<Vec<u64>>)], v| list.iter().find(|i| i.0 == v).and_then(|i| i.1.clone());
+    for (v, bound) in bounds.iter_mut().filter(|b| b.1 > 0) {
+        if let (Some(p), Some(q)) = (find(&x, *v), find(&y, *v))
+            && (p.last() != Some(&0) || q.last() != Some(&0))
+        {
+            *bound = (*bound).min(residues::gcd(&prime, &p, &q).len().saturating_sub(1) as u64);
+        }
+    }
 }

@@ -31,10 +31,10 @@ impl Poly {
         for (i, key) in self.keys.chunks_exact(w).enumerate() {
             groups.entry(field.get(key)).or_default().push(i);
         }
-        groups.into_iter().rev().map(|(power, list)| (narrow(power), self.picked(var, &list))).collect()
+        groups.into_iter().rev().map(|(power, list)| (narrow(power), self.selected(&list, |v| v != var))).collect()
     }
-    /// Terms from a rising list without their power of `var`, which is the same in all.
-    fn picked(&self, var: Var, list: &[usize]) -> Self {
+    /// Terms from a rising list with only some variables; no two become the same.
+    pub(crate) fn selected(&self, list: &[usize], keep: impl Fn(Var) -> bool) -> Self {
         let mut keys = Vec::with_capacity(list.len() * words(&self.fields));
         for &i in list {
             keys.extend_from_slice(self.key(i));
@@ -43,7 +43,7 @@ impl Poly {
             Coefficients::Small(c) => Coefficients::Small(list.iter().map(|&i| c[i]).collect()),
             Coefficients::Big(c) => Coefficients::from_big(list.iter().map(|&i| c[i].clone()).collect()),
         };
-        let rest = layout(self.fields.iter().filter(|f| f.var != var).map(|f| (f.var, f.degree)));
+        let rest = layout(self.fields.iter().filter(|f| keep(f.var)).map(|f| (f.var, f.degree)));
         let keys = repack(&keys, list.len(), &self.fields, &rest);
         Self::normalized(rest, keys, coefficients)
     }
@@ -56,7 +56,7 @@ impl Poly {
         let w = words(&self.fields);
         let list: Vec<usize> =
             (0..self.len()).filter(|i| field.get(&self.keys[i * w..(i + 1) * w]) == u64::from(power)).collect();
-        self.picked(var, &list)
+        self.selected(&list, |v| v != var)
     }
     /// The leading coefficient as a polynomial in one variable.
     #[must_use]

@@ -7,6 +7,7 @@ use super::coefficients::Coefficients;
 use super::layout::{Field, words};
 use super::{Poly, Var, narrow};
 use dashu_int::IBig;
+use rayon::prelude::*;
 use std::ops::Range;
 
 /// Neighbouring fields of one word whose bits index a table of texts.
@@ -31,14 +32,14 @@ enum Part {
     Single(Single),
 }
 
-/// A table has at most 2^7 texts, so that all tables of a term stay in the nearest cache.
-const TABLE_BITS: u8 = 7;
+/// A table has at most 2^10 texts, so that all tables of a term stay in the second cache.
+const TABLE_BITS: u8 = 10;
 
 /// The longest text in a table.
 const LONGEST: usize = 96;
 
-/// Texts of this length or less are copied as a whole slot, which takes two instructions.
-const SLOT: usize = 32;
+/// Texts of this length or less are copied as a whole slot, which takes three instructions.
+const SLOT: usize = 48;
 
 /// Text leaves in pieces of about this size.
 const PIECE: usize = 1 << 16;
@@ -250,7 +251,7 @@ impl Poly {
         };
         // Terms of one power of the first variable stand together.
         let writer = Writer::new(&self.fields, Some(main), &name);
-        let mut out = Vec::new();
+        let mut ranges = Vec::new();
         let mut start = 0;
         while start < self.len() {
             let power = first.get(self.key(start));
@@ -267,11 +268,17 @@ impl Poly {
                 }
                 step /= 2;
             }
-            let mut text = String::new();
-            writer.write(self, start..end + 1, &mut |piece| text.push_str(piece));
-            out.push((narrow(power), text));
+            ranges.push((narrow(power), start..end + 1));
             start = end + 1;
         }
-        out
+        let write = |(power, range): (u32, Range<usize>)| {
+            let mut text = String::new();
+            writer.write(self, range, &mut |piece| text.push_str(piece));
+            (power, text)
+        };
+        if self.len() < 10_000 {
+            return ranges.into_iter().map(write).collect();
+        }
+        ranges.into_par_iter().map(write).collect()
     }
 }

@@ -9,7 +9,7 @@
 //! Which sets matter is worked out before any polynomial is multiplied, with an upper bound of their terms.
 
 use super::condense::is_odd;
-use super::terms::{Run, Terms, merged};
+use super::terms::{Pool, Run, Terms, merged};
 use super::{Augmented, Solutions, SolveError};
 use crate::algebra::poly::arithmetic::{Key, by_words};
 use crate::algebra::poly::coefficients::Coefficient;
@@ -312,6 +312,7 @@ fn minors<K: Key, C: Coefficient>(
     let unit = |c: &[u64]| K::load(c, w).into_owned();
     let one = unit(&vec![0; w]).remove(0);
     let mut now: Vec<Terms<K, C>> = vec![Terms { keys: vec![one], values: vec![number(&IBig::ONE)] }];
+    let mut pool = Pool::new();
     for step in &plan.steps {
         let entries: Vec<Terms<K, C>> = system.rows[step.row]
             .iter()
@@ -334,10 +335,11 @@ fn minors<K: Key, C: Coefficient>(
                     runs.push(Run { terms: &now[e.from as usize], shift: k, scale });
                 }
             }
-            next.push(merged(runs));
+            next.push(merged(runs, &mut pool));
         }
-        now = next;
+        std::mem::replace(&mut now, next).into_iter().for_each(|t| pool.give(t));
     }
+    drop(pool);
     let sets = plan.steps.last().map_or(&[][..], |s| &s.sets);
     let poly = |t: Terms<K, C>| {
         let keys = if fields.is_empty() { Vec::new() } else { K::flatten(t.keys) };

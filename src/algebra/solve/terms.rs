@@ -17,26 +17,65 @@ pub(super) struct Run<'a, K, C> {
     pub(super) scale: C,
 }
 
+/// Lists that have served. Fresh memory costs more than merging does: the system hands it out page by page.
+pub(super) struct Pool<K, C> {
+    free: Vec<Terms<K, C>>,
+}
+
+/// More lists than this aren't kept.
+const KEPT: usize = 12;
+
+impl<K: Key, C: Coefficient> Pool<K, C> {
+    pub(super) fn new() -> Self {
+        Self { free: Vec::new() }
+    }
+    /// An empty list with room for so many terms: the smallest that serves.
+    fn take(&mut self, room: usize) -> Terms<K, C> {
+        let serves = |t: &&(usize, usize)| t.1 >= room;
+        let sizes: Vec<(usize, usize)> = self.free.iter().map(|t| t.keys.capacity()).enumerate().collect();
+        match sizes.iter().filter(serves).min_by_key(|t| t.1) {
+            Some((i, _)) => self.free.swap_remove(*i),
+            None => Terms { keys: Vec::with_capacity(room), values: Vec::with_capacity(room) },
+        }
+    }
+    /// Takes a list back.
+    pub(super) fn give(&mut self, mut terms: Terms<K, C>) {
+        (terms.keys.clear(), terms.values.clear());
+        self.free.push(terms);
+        if self.free.len() > KEPT {
+            let smallest = (0..self.free.len()).min_by_key(|&i| self.free[i].keys.capacity()).unwrap_or(0);
+            self.free.swap_remove(smallest);
+        }
+    }
+}
+
 /// The sum of all runs.
-pub(super) fn merged<K: Key, C: Coefficient>(mut runs: Vec<Run<'_, K, C>>) -> Terms<K, C> {
+pub(super) fn merged<K: Key, C: Coefficient>(mut runs: Vec<Run<'_, K, C>>, pool: &mut Pool<K, C>) -> Terms<K, C> {
     // The shortest first, in pairs, so that few terms are moved more than once.
     runs.sort_by_key(|r| r.terms.keys.len());
-    let mut lists: std::collections::VecDeque<Terms<K, C>> = runs
-        .chunks(2)
-        .map(|pair| match pair {
+    let mut lists: std::collections::VecDeque<Terms<K, C>> = std::collections::VecDeque::new();
+    for pair in runs.chunks(2) {
+        let room = pair.iter().map(|r| r.terms.keys.len()).sum();
+        let mut out = pool.take(room);
+        match pair {
             [a, b] => merge(
                 (&a.terms.keys, &a.terms.values, |k: &K| k.times(a.shift), |c: &C| c.product(&a.scale)),
                 (&b.terms.keys, &b.terms.values, |k: &K| k.times(b.shift), |c: &C| c.product(&b.scale)),
+                &mut out,
             ),
-            rest => Terms {
-                keys: rest[0].terms.keys.iter().map(|k| k.times(rest[0].shift)).collect(),
-                values: rest[0].terms.values.iter().map(|c| c.product(&rest[0].scale)).collect(),
-            },
-        })
-        .collect();
+            rest => {
+                let run = &rest[0];
+                out.keys.extend(run.terms.keys.iter().map(|k| k.times(run.shift)));
+                out.values.extend(run.terms.values.iter().map(|c| c.product(&run.scale)));
+            }
+        }
+        lists.push_back(out);
+    }
     while lists.len() > 1 {
         if let (Some(a), Some(b)) = (lists.pop_front(), lists.pop_front()) {
-            let sum = merge((&a.keys, &a.values, K::clone, C::clone), (&b.keys, &b.values, K::clone, C::clone));
+            let mut sum = pool.take(a.keys.len() + b.keys.len());
+            merge((&a.keys, &a.values, K::clone, C::clone), (&b.keys, &b.values, K::clone, C::clone), &mut sum);
+            (pool.give(a), pool.give(b));
             let at = lists.iter().position(|l| l.keys.len() > sum.keys.len()).unwrap_or(lists.len());
             lists.insert(at, sum);
         }
@@ -47,15 +86,14 @@ pub(super) fn merged<K: Key, C: Coefficient>(mut runs: Vec<Run<'_, K, C>>) -> Te
 /// One list with what is to be done to its monomials and its coefficients.
 type Side<'a, K, C, F, G> = (&'a [K], &'a [C], F, G);
 
-fn merge<K: Key, C: Coefficient, F, G, H, I>(a: Side<'_, K, C, F, G>, b: Side<'_, K, C, H, I>) -> Terms<K, C>
+fn merge<K: Key, C: Coefficient, F, G, H, I>(a: Side<'_, K, C, F, G>, b: Side<'_, K, C, H, I>, out: &mut Terms<K, C>)
 where
     F: Fn(&K) -> K,
     G: Fn(&C) -> C,
     H: Fn(&K) -> K,
     I: Fn(&C) -> C,
 {
-    let room = a.0.len() + b.0.len();
-    let (mut keys, mut values) = (Vec::with_capacity(room), Vec::with_capacity(room));
+    let (keys, values) = (&mut out.keys, &mut out.values);
     let (mut i, mut j) = (0, 0);
     while i < a.0.len() && j < b.0.len() {
         let (x, y) = (a.2(&a.0[i]), b.2(&b.0[j]));
@@ -93,5 +131,4 @@ where
     values.extend(a.1[i..].iter().map(&a.3));
     keys.extend(b.0[j..].iter().map(&b.2));
     values.extend(b.1[j..].iter().map(&b.3));
-    Terms { keys, values }
 }
