@@ -12,7 +12,6 @@ pub(crate) mod layout;
 mod shape;
 #[cfg(test)]
 pub(crate) mod tests;
-mod text;
 
 use coefficients::Coefficients;
 use dashu_int::IBig;

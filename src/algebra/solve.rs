@@ -2,8 +2,7 @@
 //!
 //! Three steps: unknowns with a pivot ±1 in a sparse row or column are eliminated as they stand; then, where symbols
 //! occur, minors over sets of columns give determinant and numerators without any division ([`minors`]); small systems in
-//! one variable, and symbolic ones in which few terms meet in long coefficients, go by fraction-free elimination
-//! ([`bareiss`]). Larger systems in the main variable alone go to [`super::modular`] as they stand.
+//! one variable go by fraction-free elimination ([`bareiss`]). Larger systems in the main variable alone go to [`super::modular`] as they stand.
 
 mod bareiss;
 mod condense;

@@ -78,43 +78,6 @@ proptest! {
         }
     }
 
-    /// Against a text put together from the terms one by one.
-    #[test]
-    fn texts_follow_the_terms(p in polys(30, 12)) {
-        let names: Vec<String> = (0..30).map(|v| "signal".repeat(1 + v / 10) + &v.to_string()).collect();
-        let name = |v: Var| names[v.0 as usize].as_str();
-        let mut expected = String::new();
-        for (powers, c) in p.terms() {
-            let negative = c < IBig::ZERO;
-            expected.push_str(match (expected.is_empty(), negative) {
-                (true, false) => "",
-                (true, true) => "-",
-                (false, false) => " + ",
-                (false, true) => " - ",
-            });
-            let magnitude = if negative { -c } else { c };
-            let mut factors = Vec::new();
-            if magnitude != IBig::ONE || powers.is_empty() {
-                factors.push(magnitude.to_string());
-            }
-            let power = |(v, e): &(Var, u32)| if *e == 1 { name(*v).to_owned() } else { format!("{}^{e}", name(*v)) };
-            factors.extend(powers.iter().map(power));
-            expected.push_str(&factors.join("*"));
-        }
-        let mut text = String::new();
-        p.write_text(name, |piece| text.push_str(piece));
-        prop_assert_eq!(&text, if expected.is_empty() { "0" } else { &expected });
-        for main in [Var(0), Var(5)] {
-            let mut list = Vec::new();
-            for (power, c) in p.powers(main) {
-                let mut text = String::new();
-                c.write_text(name, |piece| text.push_str(piece));
-                list.push((power, text));
-            }
-            prop_assert_eq!(p.coefficient_texts(main, name), list);
-        }
-    }
-
     #[test]
     fn taken_apart_and_put_together(a in polys(3, 9), n in -20i64..20, d in 1i64..9) {
         prop_assert_eq!(Poly::from_terms(a.terms()), a.clone());

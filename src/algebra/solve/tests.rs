@@ -72,6 +72,35 @@ proptest! {
     }
 }
 
+/// Nine coupled sections in s alone, eliminated without fractions, against the minors of the same system with one of its
+/// numbers as a symbol.
+#[test]
+fn numeric_systems_agree_with_symbolic_ones() {
+    let number = |n: i64| Poly::constant(IBig::from(n));
+    let n = 9;
+    let rows = |gain: Poly| -> Vec<Vec<(usize, Poly)>> {
+        (0..n)
+            .map(|i| {
+                let own = Poly::var(Var::S).scale(&IBig::from(i as i64 + 2)).add(&number(3));
+                let mut row = vec![(i, own), ((i + 1) % n, number(-2)), ((i + 4) % n, number(i as i64 - 5))];
+                row.retain(|e| !e.1.is_zero());
+                if i == 0 {
+                    row[1].1 = gain.clone();
+                }
+                row.sort_by_key(|e| e.0);
+                row
+            })
+            .collect()
+    };
+    let right = [(2, number(7)), (5, Poly::var(Var::S))];
+    let (seven, symbol) = (number(-7), Poly::var(Var(9)));
+    let numeric = System { rows: rows(seven) }.solve(&right, &[0, 4]).expect("it is regular");
+    let symbolic = System { rows: rows(symbol) }.solve(&right, &[0, 4]).expect("it is regular");
+    let value = |p: &Poly| p.substitute(Var(9), &crate::algebra::RBig::from(-7)).0;
+    assert_eq!(numeric.determinant, value(&symbolic.determinant));
+    assert_eq!(numeric.numerators, symbolic.numerators.iter().map(value).collect::<Vec<_>>());
+}
+
 #[test]
 fn too_tangled_for_so_many_symbols() {
     let n = 40;
