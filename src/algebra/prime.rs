@@ -113,7 +113,7 @@ impl Prime {
     }
     /// The primes from 101 to 65521, rising.
     pub(crate) fn small() -> impl Iterator<Item = Self> {
-        let is_prime = |n: &u64| (2..).take_while(|d| d * d <= *n).all(|d| !n.is_multiple_of(d));
+        let is_prime = |n: &u64| (2..256).take_while(|d| d * d <= *n).all(|d| !n.is_multiple_of(d));
         (101u64..1 << 16).step_by(2).filter(is_prime).map(Self::new)
     }
     /// The first of [`Self::all`].

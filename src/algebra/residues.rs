@@ -14,7 +14,9 @@ pub(crate) fn trim(mut v: Vec<u64>) -> Vec<u64> {
 pub(crate) fn monic(prime: &Prime, mut v: Vec<u64>) -> Vec<u64> {
     if let Some(&top) = v.last().filter(|&&top| top != prime.one) {
         let inverse = prime.inverse(top);
-        v.iter_mut().for_each(|c| *c = prime.mul(*c, inverse));
+        for c in &mut v {
+            *c = prime.mul(*c, inverse);
+        }
     }
     v
 }

@@ -22,7 +22,7 @@ fn centred(x: &IBig, modulus: &IBig) -> IBig {
     }
 }
 
-fn reduce(values: Vec<IBig>, modulus: &IBig) -> Vec<IBig> {
+fn reduce(values: &[IBig], modulus: &IBig) -> Vec<IBig> {
     let mut out: Vec<IBig> = values.iter().map(|c| centred(c, modulus)).collect();
     while out.last().is_some_and(Coefficient::is_zero) {
         out.pop();
@@ -56,7 +56,7 @@ fn div_rem(a: &[IBig], b: &[IBig], modulus: &IBig) -> (Vec<IBig>, Vec<IBig>) {
         quotient[k] = q;
     }
     rest.truncate(b.len() - 1);
-    (reduce(quotient, modulus), reduce(rest, modulus))
+    (reduce(&quotient, modulus), reduce(&rest, modulus))
 }
 
 /// Residues as integers nearest to 0.
@@ -81,18 +81,18 @@ fn lift_pair(prime: &Prime, f: &[IBig], g: &[u64], h: &[u64], target: &IBig) -> 
     while modulus < *target {
         modulus = &modulus * &modulus;
         let m = &modulus;
-        let error = reduce(added(f, &multiply(&g, &h), true), m);
-        let (q, r) = div_rem(&reduce(multiply(&s, &error), m), &h, m);
+        let error = reduce(&added(f, &multiply(&g, &h), true), m);
+        let (q, r) = div_rem(&reduce(&multiply(&s, &error), m), &h, m);
         let more = added(&multiply(&t, &error), &multiply(&q, &g), false);
-        g = reduce(added(&g, &more, false), m);
-        h = reduce(added(&h, &r, false), m);
+        g = reduce(&added(&g, &more, false), m);
+        h = reduce(&added(&h, &r, false), m);
         let mut error = added(&multiply(&s, &g), &multiply(&t, &h), false);
         error[0] -= IBig::ONE;
-        let error = reduce(error, m);
-        let (q, r) = div_rem(&reduce(multiply(&s, &error), m), &h, m);
-        s = reduce(added(&s, &r, true), m);
+        let error = reduce(&error, m);
+        let (q, r) = div_rem(&reduce(&multiply(&s, &error), m), &h, m);
+        s = reduce(&added(&s, &r, true), m);
         let more = added(&multiply(&t, &error), &multiply(&q, &g), false);
-        t = reduce(added(&t, &more, true), m);
+        t = reduce(&added(&t, &more, true), m);
     }
     (g, h)
 }
@@ -109,7 +109,7 @@ fn lift_all(prime: &Prime, f: &[IBig], factors: Vec<Vec<u64>>, target: &IBig) ->
     while let Some((f, mut left, lead)) = open.pop() {
         if left.len() == 1 {
             let inverse = f.last().map_or(IBig::ONE, |c| invert(prime, c, &modulus));
-            out.push(reduce(f.iter().map(|c| c * &inverse).collect(), &modulus));
+            out.push(reduce(&f.iter().map(|c| c * &inverse).collect::<Vec<_>>(), &modulus));
             continue;
         }
         let right = left.split_off(left.len() / 2);
@@ -205,7 +205,7 @@ fn divisor(f: &[IBig], lifted: &[Vec<IBig>], set: &[usize], modulus: &IBig) -> O
     if low.is_zero() != goal.is_zero() || (!low.is_zero() && !(&goal % &low).is_zero()) {
         return None;
     }
-    let product = set.iter().fold(vec![lead.clone()], |p, &i| reduce(multiply(&p, &lifted[i]), modulus));
+    let product = set.iter().fold(vec![lead.clone()], |p, &i| reduce(&multiply(&p, &lifted[i]), modulus));
     let factor = primitive(product);
     let quotient = divide(f, &factor)?;
     Some((factor, quotient))

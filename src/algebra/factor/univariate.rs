@@ -7,11 +7,14 @@ use crate::algebra::{IBig, Poly, Var, residues};
 
 /// Square-free parts of a higher degree are only searched for rational roots: modulo a prime, splitting takes time with
 /// the cube of the degree.
-pub const MAX_DEGREE: u32 = 150;
+const MAX_DEGREE: u32 = 150;
 
 /// At most so many sets of factors modulo a prime are tried for one part: a polynomial can have many factors modulo
 /// every prime and none over the rationals.
-pub const MAX_SETS: usize = 20_000;
+const MAX_SETS: usize = 20_000;
+
+/// Products of the factors of one degree modulo a prime, with that degree.
+type ByDegree = Vec<(Vec<u64>, usize)>;
 
 /// How many primes are looked at for one with few factors.
 const PRIMES: usize = 4;
@@ -59,7 +62,7 @@ fn irreducible(p: Vec<IBig>) -> Vec<Vec<IBig>> {
         out.push(rest);
         return out;
     }
-    let mut best: Option<(Prime, Vec<(Vec<u64>, usize)>, usize)> = None;
+    let mut best: Option<(Prime, ByDegree, usize)> = None;
     let candidates = Prime::small().filter_map(|q| Some((q, square_free_image(&rest, &q)?)));
     for (q, f) in candidates.take(PRIMES) {
         let by_degree = finite::distinct_degrees(&q, &f);

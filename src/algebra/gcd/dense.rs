@@ -24,7 +24,9 @@ pub(crate) fn primitive(mut values: Vec<IBig>) -> Vec<IBig> {
         by = -by;
     }
     if by != IBig::ONE && by != IBig::ZERO {
-        values.iter_mut().for_each(|c| *c = &*c / &by);
+        for c in &mut values {
+            *c = &*c / &by;
+        }
     }
     values
 }
@@ -54,7 +56,9 @@ pub(crate) fn gcd(a: &[IBig], b: &[IBig]) -> Vec<IBig> {
             (values, modulus) = (Vec::new(), UBig::ONE);
         }
         let scale = prime.of_big(&lead);
-        g.iter_mut().for_each(|c| *c = prime.mul(*c, scale));
+        for c in &mut g {
+            *c = prime.mul(*c, scale);
+        }
         let changed = lift(&mut values, &mut modulus, &prime, &g);
         // Worth a division where the last prime changed nothing, or nothing needs more than one prime.
         if !changed || tried.is_empty() {

@@ -88,7 +88,7 @@ pub(super) fn packed_product(fields: &[Field], a: &Poly, b: &Poly, x: &[IBig], y
         let places = places(p, fields);
         let mut out = vec![IBig::ZERO; places.first().map_or(0, |m| m + 1)];
         for (at, c) in places.into_iter().zip(values) {
-            out[at] = c.clone();
+            out[at].clone_from(c);
         }
         out
     };

@@ -27,7 +27,8 @@ pub(super) fn condense(system: Augmented) -> (Augmented, bool) {
         let Some((c, minus)) = pivot(&rows, &columns, r, &kept) else { continue };
         let row = std::mem::take(&mut rows[r]);
         gone[r] = true;
-        (row_order.push(r), column_order.push(c));
+        row_order.push(r);
+        column_order.push(c);
         negative ^= minus;
         for &j in row.keys().filter(|&&j| j < n) {
             columns[j].remove(&r);

@@ -337,7 +337,9 @@ fn minors<K: Key, C: Coefficient>(
             }
             next.push(merged(runs, &mut pool));
         }
-        std::mem::replace(&mut now, next).into_iter().for_each(|t| pool.give(t));
+        for terms in std::mem::replace(&mut now, next) {
+            pool.give(terms);
+        }
     }
     drop(pool);
     let sets = plan.steps.last().map_or(&[][..], |s| &s.sets);

@@ -40,7 +40,8 @@ impl<K: Key, C: Coefficient> Pool<K, C> {
     }
     /// Takes a list back.
     pub(super) fn give(&mut self, mut terms: Terms<K, C>) {
-        (terms.keys.clear(), terms.values.clear());
+        terms.keys.clear();
+        terms.values.clear();
         self.free.push(terms);
         if self.free.len() > KEPT {
             let smallest = (0..self.free.len()).min_by_key(|&i| self.free[i].keys.capacity()).unwrap_or(0);
@@ -59,8 +60,8 @@ pub(super) fn merged<K: Key, C: Coefficient>(mut runs: Vec<Run<'_, K, C>>, pool:
         let mut out = pool.take(room);
         match pair {
             [a, b] => merge(
-                (&a.terms.keys, &a.terms.values, |k: &K| k.times(a.shift), |c: &C| c.product(&a.scale)),
-                (&b.terms.keys, &b.terms.values, |k: &K| k.times(b.shift), |c: &C| c.product(&b.scale)),
+                &(&a.terms.keys, &a.terms.values, |k: &K| k.times(a.shift), |c: &C| c.product(&a.scale)),
+                &(&b.terms.keys, &b.terms.values, |k: &K| k.times(b.shift), |c: &C| c.product(&b.scale)),
                 &mut out,
             ),
             rest => {
@@ -74,8 +75,9 @@ pub(super) fn merged<K: Key, C: Coefficient>(mut runs: Vec<Run<'_, K, C>>, pool:
     while lists.len() > 1 {
         if let (Some(a), Some(b)) = (lists.pop_front(), lists.pop_front()) {
             let mut sum = pool.take(a.keys.len() + b.keys.len());
-            merge((&a.keys, &a.values, K::clone, C::clone), (&b.keys, &b.values, K::clone, C::clone), &mut sum);
-            (pool.give(a), pool.give(b));
+            merge(&(&a.keys, &a.values, K::clone, C::clone), &(&b.keys, &b.values, K::clone, C::clone), &mut sum);
+            pool.give(a);
+            pool.give(b);
             let at = lists.iter().position(|l| l.keys.len() > sum.keys.len()).unwrap_or(lists.len());
             lists.insert(at, sum);
         }
@@ -86,7 +88,7 @@ pub(super) fn merged<K: Key, C: Coefficient>(mut runs: Vec<Run<'_, K, C>>, pool:
 /// One list with what is to be done to its monomials and its coefficients.
 type Side<'a, K, C, F, G> = (&'a [K], &'a [C], F, G);
 
-fn merge<K: Key, C: Coefficient, F, G, H, I>(a: Side<'_, K, C, F, G>, b: Side<'_, K, C, H, I>, out: &mut Terms<K, C>)
+fn merge<K: Key, C: Coefficient, F, G, H, I>(a: &Side<'_, K, C, F, G>, b: &Side<'_, K, C, H, I>, out: &mut Terms<K, C>)
 where
     F: Fn(&K) -> K,
     G: Fn(&C) -> C,
