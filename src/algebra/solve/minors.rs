@@ -332,7 +332,8 @@ fn minors<K: Key, C: Coefficient>(
                     if e.negative {
                         scale.negate();
                     }
-                    runs.push(Run { terms: &now[e.from as usize], shift: k, scale });
+                    let from = &now[e.from as usize];
+                    runs.push(Run { keys: &from.keys, values: &from.values, shift: k, scale });
                 }
             }
             next.push(merged(runs, &mut pool));

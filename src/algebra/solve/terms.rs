@@ -10,9 +10,11 @@ pub(super) struct Terms<K, C> {
     pub(super) values: Vec<C>,
 }
 
-/// A list times one term, not multiplied out.
+/// Part of a list times one term, not multiplied out.
+#[derive(Clone)]
 pub(super) struct Run<'a, K, C> {
-    pub(super) terms: &'a Terms<K, C>,
+    pub(super) keys: &'a [K],
+    pub(super) values: &'a [C],
     pub(super) shift: &'a K,
     pub(super) scale: C,
 }
@@ -50,39 +52,74 @@ impl<K: Key, C: Coefficient> Pool<K, C> {
     }
 }
 
+/// About so many terms of one run are merged at a time: what stands between then stays in the cache.
+const BLOCK: usize = 1024;
+
 /// The sum of all runs.
 pub(super) fn merged<K: Key, C: Coefficient>(mut runs: Vec<Run<'_, K, C>>, pool: &mut Pool<K, C>) -> Terms<K, C> {
-    // The shortest first, in pairs, so that few terms are moved more than once.
-    runs.sort_by_key(|r| r.terms.keys.len());
-    let mut lists: std::collections::VecDeque<Terms<K, C>> = std::collections::VecDeque::new();
-    for pair in runs.chunks(2) {
-        let room = pair.iter().map(|r| r.terms.keys.len()).sum();
-        let mut out = pool.take(room);
-        match pair {
-            [a, b] => merge(
-                &(&a.terms.keys, &a.terms.values, |k: &K| k.times(a.shift), |c: &C| c.product(&a.scale)),
-                &(&b.terms.keys, &b.terms.values, |k: &K| k.times(b.shift), |c: &C| c.product(&b.scale)),
-                &mut out,
-            ),
-            rest => {
-                let run = &rest[0];
-                out.keys.extend(run.terms.keys.iter().map(|k| k.times(run.shift)));
-                out.values.extend(run.terms.values.iter().map(|c| c.product(&run.scale)));
+    let mut out = pool.take(runs.iter().map(|r| r.keys.len()).sum());
+    loop {
+        runs.retain(|r| !r.keys.is_empty());
+        // The longest run's term number BLOCK parts what is merged now from what is merged later.
+        let Some(longest) = runs.iter().max_by_key(|r| r.keys.len()) else { return out };
+        let Some(pivot) = longest.keys.get(BLOCK).map(|k| k.times(longest.shift)) else {
+            merge_all(&mut runs, pool, &mut out);
+            return out;
+        };
+        let mut now = Vec::with_capacity(runs.len());
+        for r in &mut runs {
+            let count = r.keys.partition_point(|k| k.times(r.shift) > pivot);
+            if count > 0 {
+                now.push(Run { keys: &r.keys[..count], values: &r.values[..count], ..r.clone() });
+                (r.keys, r.values) = (&r.keys[count..], &r.values[count..]);
             }
         }
-        lists.push_back(out);
+        merge_all(&mut now, pool, &mut out);
     }
-    while lists.len() > 1 {
-        if let (Some(a), Some(b)) = (lists.pop_front(), lists.pop_front()) {
-            let mut sum = pool.take(a.keys.len() + b.keys.len());
-            merge(&(&a.keys, &a.values, K::clone, C::clone), &(&b.keys, &b.values, K::clone, C::clone), &mut sum);
-            pool.give(a);
-            pool.give(b);
+}
+
+/// Appends the sum of all runs.
+fn merge_all<K: Key, C: Coefficient>(runs: &mut [Run<'_, K, C>], pool: &mut Pool<K, C>, out: &mut Terms<K, C>) {
+    // The shortest first, in pairs, so that few terms are moved more than once.
+    runs.sort_by_key(|r| r.keys.len());
+    if runs.len() <= 2 {
+        merge_pair(runs, out);
+        return;
+    }
+    let mut lists: std::collections::VecDeque<Terms<K, C>> = std::collections::VecDeque::new();
+    for pair in runs.chunks(2) {
+        let mut sum = pool.take(pair.iter().map(|r| r.keys.len()).sum());
+        merge_pair(pair, &mut sum);
+        lists.push_back(sum);
+    }
+    while let (Some(a), Some(b)) = (lists.pop_front(), lists.pop_front()) {
+        let last = lists.is_empty();
+        let mut sum = if last { None } else { Some(pool.take(a.keys.len() + b.keys.len())) };
+        let to = sum.as_mut().unwrap_or(out);
+        merge(&(&a.keys, &a.values, K::clone, C::clone), &(&b.keys, &b.values, K::clone, C::clone), to);
+        pool.give(a);
+        pool.give(b);
+        if let Some(sum) = sum {
             let at = lists.iter().position(|l| l.keys.len() > sum.keys.len()).unwrap_or(lists.len());
             lists.insert(at, sum);
         }
     }
-    lists.pop_front().unwrap_or(Terms { keys: Vec::new(), values: Vec::new() })
+}
+
+/// Appends the sum of no more than two runs.
+fn merge_pair<K: Key, C: Coefficient>(pair: &[Run<'_, K, C>], out: &mut Terms<K, C>) {
+    match pair {
+        [a, b] => merge(
+            &(a.keys, a.values, |k: &K| k.times(a.shift), |c: &C| c.product(&a.scale)),
+            &(b.keys, b.values, |k: &K| k.times(b.shift), |c: &C| c.product(&b.scale)),
+            out,
+        ),
+        [run] => {
+            out.keys.extend(run.keys.iter().map(|k| k.times(run.shift)));
+            out.values.extend(run.values.iter().map(|c| c.product(&run.scale)));
+        }
+        _ => {}
+    }
 }
 
 /// One list with what is to be done to its monomials and its coefficients.
