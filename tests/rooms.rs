@@ -19,9 +19,9 @@ const ALLOWED: &[(&str, &[&str])] = &[
     ("cli", &["source", "diagnostics", "syntax", "netlist", "resolve", "algebra", "flow", "results", "report"]),
 ];
 
-/// Rooms without floating point, but for the files that find roots and hand decimals to the results.
+/// Rooms without floating point, but for the files that find roots and round to decimals.
 const EXACT: &[&str] = &["source", "syntax", "netlist", "resolve", "flow", "algebra"];
-const DECIMALS: &[&str] = &["src/algebra/roots", "src/flow/figures.rs"];
+const DECIMALS: &[&str] = &["src/algebra/roots", "src/algebra/decimal.rs"];
 
 struct Source {
     /// Path from the root of the project, with `/`.

@@ -177,7 +177,7 @@ type Fact = (String, Vec<String>);
 fn facts(t: &Transfer) -> (Vec<Fact>, bool) {
     let mut facts: Vec<Fact> = Vec::new();
     let mut rounded = false;
-    let symbols = t.form.as_ref().map_or_else(Vec::new, symbols);
+    let symbols = symbols(t);
     let others: Vec<&str> = symbols.iter().copied().filter(|s| *s != "pi").collect();
     if !symbols.is_empty() {
         facts.push(("symbols".to_owned(), vec![symbols.join(", ")]));
@@ -230,13 +230,23 @@ fn facts(t: &Transfer) -> (Vec<Fact>, bool) {
     (facts, rounded)
 }
 
-/// The symbols that stand in a form, dead times left out.
-fn symbols(form: &Form) -> Vec<&str> {
+/// The symbols that stand in a result, those of its dead times last.
+fn symbols(t: &Transfer) -> Vec<&str> {
+    let Some(form) = &t.form else { return Vec::new() };
     let mut used = form.numerator.variables();
     used.extend(form.denominator.variables());
     let naming = naming(form, "");
-    let kept = form.names.iter().filter(|(v, _)| *v != Var::S && !naming.is_delay(*v) && used.contains(v));
-    kept.map(|n| n.1.as_str()).collect()
+    let (delays, params): (Vec<_>, Vec<_>) =
+        form.names.iter().filter(|(v, _)| *v != Var::S && used.contains(v)).partition(|(v, _)| naming.is_delay(*v));
+    let mut symbols: Vec<&str> = params.into_iter().map(|n| n.1.as_str()).collect();
+    let is_part = |c: char| c.is_alphanumeric() || matches!(c, '_' | '.');
+    for kept in t.kept.iter().map(String::as_str).filter(|k| !k.is_empty()) {
+        let in_delay = |name: &str| name.split(|c: char| !is_part(c)).any(|word| word == kept);
+        if !symbols.contains(&kept) && delays.iter().any(|n| in_delay(&n.1)) {
+            symbols.push(kept);
+        }
+    }
+    symbols
 }
 
 /// Why there is no list of poles or zeros, where that can be said.

@@ -195,6 +195,17 @@ y / r = ───────────────────
 }
 
 #[test]
+fn a_symbol_of_a_dead_time_is_listed() {
+    let mut late = transfer(poly(&[(1, &[(DELAY, 1)])]), poly(&[(1, &[(S, 1)]), (1, &[])]));
+    late.kept = vec!["Td".into(), "T".into()];
+    if let Some(form) = &mut late.form {
+        form.names = vec![(DELAY, "exp(-(Td)*s)".into())];
+    }
+    let text = told(vec![late], FractionStyle::Automatic);
+    assert!(text.contains("  symbols         Td\n  poles, zeros    depend on the symbols\n"), "{text}");
+}
+
+#[test]
 fn a_transform_that_does_not_converge_on_the_axis_is_said_so_in_a_sentence() {
     let double_integrator = Transfer {
         kind: TransferKind::Loop,

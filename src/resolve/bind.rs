@@ -222,7 +222,8 @@ impl Writer<'_> {
             );
         } else {
             d = d.label(span, "not known here");
-            let near = did_you_mean(text, params.iter().map(String::as_str));
+            let reserved = ["s", "z", "pi"].into_iter().filter(|word| word.eq_ignore_ascii_case(text));
+            let near = did_you_mean(text, reserved.chain(params.iter().map(String::as_str)));
             let define = ctx.frame.is_some().then(|| "a define sees its own parameters only; add one to it".to_owned());
             d = d.help(near.or(define).unwrap_or_else(|| format!("declare it: `param {text} = …`")));
         }
