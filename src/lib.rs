@@ -8,10 +8,12 @@
 //! 4. [`netlist`] is what comes of it: the one intermediate form, plain data;
 //! 5. [`flow`] makes the signal-flow graph and reduces it ([`flow::derive`], [`flow::mason`]);
 //! 6. [`algebra`] does the exact arithmetic for all of them and knows nothing of netlists;
-//! 7. [`results`] are plain data, made once and rendered many times by [`report`];
-//! 8. [`diagnostics`] is how every room tells a mistake; [`cli`] joins the rooms to a command line.
+//! 7. [`analysis`] judges the closed loop: stability, modes, margins, responses, requirements ([`analysis::assess`]);
+//! 8. [`results`] are plain data, made once and rendered many times by [`report`];
+//! 9. [`diagnostics`] is how every room tells a mistake; [`cli`] joins the rooms to a command line.
 
 pub mod algebra;
+pub mod analysis;
 pub mod cli;
 pub mod diagnostics;
 pub mod flow;

@@ -13,10 +13,14 @@ const ALLOWED: &[(&str, &[&str])] = &[
     ("syntax", &["source", "diagnostics"]),
     ("netlist", &["source", "diagnostics", "syntax", "algebra"]),
     ("resolve", &["source", "diagnostics", "syntax", "netlist", "algebra"]),
-    ("results", &["diagnostics", "algebra"]),
+    ("results", &["source", "diagnostics", "algebra"]),
     ("flow", &["source", "diagnostics", "netlist", "algebra", "results"]),
+    ("analysis", &["source", "diagnostics", "netlist", "algebra", "flow", "results"]),
     ("report", &["source", "diagnostics", "algebra", "results"]),
-    ("cli", &["source", "diagnostics", "syntax", "netlist", "resolve", "algebra", "flow", "results", "report"]),
+    (
+        "cli",
+        &["source", "diagnostics", "syntax", "netlist", "resolve", "algebra", "flow", "analysis", "results", "report"],
+    ),
 ];
 
 /// Rooms without floating point, but for the files that find roots and round to decimals.

@@ -23,7 +23,7 @@ pub(super) struct Arguments {
 }
 
 const STATUS: &str = "\
-Exit status: 0 done; 2 the input is in error (diagnostics say where); 3 a named limit was reached.
+Exit status: 0 done; 1 a requirement fails; 2 the input is in error (diagnostics say where); 3 a named limit was reached.
 NO_COLOR is honoured; --color always wins over it.";
 
 #[derive(Debug, Subcommand)]
@@ -34,6 +34,8 @@ pub(super) enum Command {
     Derive(Derive),
     /// Work out Mason's gain rule for one request
     Mason(Mason),
+    /// Judge the closed loop: stability, modes, margins, responses, and every requirement
+    Assess(Assess),
     /// Tell a diagnostic at length, with an example and its mend
     Explain(Explain),
     /// Print the completions for a shell
@@ -176,6 +178,42 @@ pub(super) struct Mason {
     pub(super) fraction: Option<Fraction>,
     #[command(flatten)]
     pub(super) output: Output,
+}
+
+/// The form of an assessment.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, ValueEnum)]
+pub(super) enum AssessFormat {
+    /// For people
+    #[default]
+    Text,
+    /// For programs
+    Json,
+    /// SARIF 2.1.0, for code hosts that annotate lines
+    Sarif,
+    /// JUnit XML, for build servers
+    Junit,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct Assess {
+    /// The file; `-` is standard input
+    #[arg(value_name = "FILE")]
+    pub(super) file: String,
+    /// Let this case stand in nominal's place
+    #[arg(long, value_name = "NAME")]
+    pub(super) case: Option<String>,
+    /// Give a param another value, such as `J=2.2` or `az.K=2.6[N*m/rad]`; may be repeated
+    #[arg(long, value_name = "NAME=VALUE")]
+    pub(super) set: Vec<String>,
+    /// List every mode and margin, and say of each figure that is absent why
+    #[arg(short, long)]
+    pub(super) verbose: bool,
+    /// Form of the results
+    #[arg(long, value_enum, default_value_t)]
+    pub(super) format: AssessFormat,
+    /// Write results to this file, whole or not at all; `-` is standard output
+    #[arg(short, long, value_name = "FILE")]
+    pub(super) output: Option<PathBuf>,
 }
 
 #[derive(Debug, Args)]

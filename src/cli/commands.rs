@@ -1,9 +1,10 @@
 //! The commands that read a model: each joins the rooms, writes its document and says how it went.
 
-use super::arguments::{self, Format, Fraction, Values};
+use super::arguments::{self, AssessFormat, Format, Fraction, Values};
 use super::files::{self, Destination, FileSystem};
 use super::terminal::Looks;
-use super::{Failure, IN_ERROR, LIMIT_REACHED, tell};
+use super::{Failure, IN_ERROR, LIMIT_REACHED, REQUIREMENT_FAILS, tell};
+use crate::analysis;
 use crate::diagnostics::{self, Code, Diagnostic, Severity};
 use crate::flow::{self, DeriveOptions, Method};
 use crate::netlist::{Netlist, RequestKind};
@@ -267,6 +268,37 @@ pub(super) fn mason(arguments: &arguments::Mason, looks: Looks, status: &mut u8)
         report::json(&document, &mut out)?;
     } else {
         report::mason(&document, text_options(arguments.fraction, looks), &mut out)?;
+    }
+    Ok(out.finish()?)
+}
+
+/// `assess`: the figures of the closed loop; a requirement that fails makes the status 1.
+pub(super) fn assess(arguments: &arguments::Assess, looks: Looks, status: &mut u8) -> Result<(), Failure> {
+    let line = CommandLine { settings: arguments.set.clone(), case: arguments.case.clone(), ..CommandLine::default() };
+    let mut model = Model::read(&arguments.file, &line);
+    let mut cases = Vec::new();
+    if let Some(netlist) = model.sound() {
+        let assessed = analysis::assess(netlist);
+        let mut told = flow::check(netlist);
+        told.extend(assessed.diagnostics.into_iter().filter(|d| !told.contains(d)).collect::<Vec<_>>());
+        cases = assessed.cases;
+        model.add(told);
+    }
+    *status = model.status(*status);
+    if *status == 0 && cases.iter().flat_map(|c| &c.requirements).any(|r| !r.holds) {
+        *status = REQUIREMENT_FAILS;
+    }
+    model.tell(looks);
+    let document = report::assess_document(model.name(&arguments.file), cases, model.told(), &model.sources);
+    if arguments.format == AssessFormat::Text && document.cases.is_empty() {
+        return Ok(());
+    }
+    let mut out = Destination::open(arguments.output.as_deref())?;
+    match arguments.format {
+        AssessFormat::Text => report::assess(&document, arguments.verbose, text_options(None, looks), &mut out)?,
+        AssessFormat::Json => report::json(&document, &mut out)?,
+        AssessFormat::Sarif => report::json(&report::sarif(&document), &mut out)?,
+        AssessFormat::Junit => report::junit(&document, &mut out)?,
     }
     Ok(out.finish()?)
 }

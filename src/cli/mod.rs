@@ -18,6 +18,8 @@ const STACK_BYTES: usize = 64 << 20;
 
 /// Everything asked was done.
 const DONE: u8 = 0;
+/// A requirement fails.
+const REQUIREMENT_FAILS: u8 = 1;
 /// The input, or the command line, is in error.
 const IN_ERROR: u8 = 2;
 /// A named limit was reached.
@@ -72,6 +74,7 @@ fn work(arguments: &[OsString]) -> u8 {
         Command::Check(a) => commands::check(&a, looks, &mut status),
         Command::Derive(a) => commands::derive(&a, looks, &mut status),
         Command::Mason(a) => commands::mason(&a, looks, &mut status),
+        Command::Assess(a) => commands::assess(&a, looks, &mut status),
         Command::Explain(a) => explain(&a, looks),
         Command::Completions(a) => {
             let mut out = io::stdout().lock();

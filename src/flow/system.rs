@@ -31,6 +31,8 @@ pub(crate) struct Part {
     /// The signals of those rows, in the order of their numbers.
     pub(crate) rows: Vec<SignalId>,
     places: FxHashMap<SignalId, usize>,
+    /// Whether what comes from outside counts: then a block that reads an input only has its modes all the same.
+    whole: bool,
 }
 
 /// The system of a part, with what is known beside its coefficients.
@@ -87,14 +89,14 @@ impl Part {
     /// The part with these rows, which must come in the order of their numbers.
     pub(crate) fn of(rows: Vec<SignalId>) -> Self {
         let places = rows.iter().enumerate().map(|(i, &v)| (v, i)).collect();
-        Self { rows, places }
+        Self { rows, places, whole: false }
     }
 
     /// Every row of a netlist.
     pub(crate) fn whole(wiring: &Wiring<'_>) -> Self {
         let signals = wiring.netlist.signals.iter().enumerate();
         let driven = signals.filter(|(_, s)| !matches!(s.driver, Driver::Input | Driver::Nothing));
-        Self::of(driven.map(|(i, _)| SignalId(i as u32)).collect())
+        Self { whole: true, ..Self::of(driven.map(|(i, _)| SignalId(i as u32)).collect()) }
     }
 
     /// The place of a signal's row.
@@ -121,7 +123,7 @@ pub(crate) fn equations(
 ) -> Result<Equations, Box<Diagnostic>> {
     let mut out = Equations { system: System::default(), right: Vec::new(), rounded: false };
     for (i, &v) in part.rows.iter().enumerate() {
-        let counts = |u| Some(u) == from || (part.place(u).is_some() && !open.contains(&u));
+        let counts = |u| part.whole || Some(u) == from || (part.place(u).is_some() && !open.contains(&u));
         let row = laws.row(wiring, v, counts)?;
         out.rounded |= row.rounded;
         let mut line = vec![(i, row.left)];

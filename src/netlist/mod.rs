@@ -350,8 +350,9 @@ pub enum RequirementKind {
         comparison: Comparison,
         /// The bound, in coherent SI, or in dB where `unit` says so.
         bound: ExprId,
-        /// The unit in which the bound was written (`deg`, `dB`, `ms`), where one was.
-        unit: Option<String>,
+        /// The unit in which the bound was written (`deg`, `dB`, `ms`), where one was; where an angular frequency is
+        /// asked for, the scale of `Hz` is 2π, and that of `dB` is 1.
+        unit: Option<DisplayUnit>,
     },
 }
 

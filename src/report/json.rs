@@ -1,5 +1,6 @@
 //! Results as JSON: the result types, key by key, in their order, with two blanks a level.
 
+use crate::results::assess::Assess;
 use crate::results::mason::Mason;
 use crate::results::{Check, Derive};
 use serde::Serialize;
@@ -15,10 +16,11 @@ pub fn json(document: &impl Serialize, out: &mut dyn Write) -> io::Result<()> {
     writeln!(out)
 }
 
-/// The JSON schema of one kind of document (`check`, `derive`, `mason`), made from the result types; `None` for
+/// The JSON schema of one kind of document (`assess`, `check`, `derive`, `mason`), made from the result types; `None` for
 /// another word.
 pub fn schema(document: &str) -> Option<String> {
     let schema = match document {
+        "assess" => schemars::schema_for!(Assess),
         "check" => schemars::schema_for!(Check),
         "derive" => schemars::schema_for!(Derive),
         "mason" => schemars::schema_for!(Mason),
@@ -35,7 +37,7 @@ mod tests {
     /// `LOOPWRIGHT_WRITE_SCHEMA=1` and commit what it wrote.
     #[test]
     fn the_schemas_in_docs_are_those_of_the_result_types() {
-        for name in ["check", "derive", "mason"] {
+        for name in ["assess", "check", "derive", "mason"] {
             let path = format!("{}/docs/schema/{name}.json", env!("CARGO_MANIFEST_DIR"));
             let wanted = schema(name).expect("there is one");
             if std::env::var_os("LOOPWRIGHT_WRITE_SCHEMA").is_some() {
@@ -44,7 +46,7 @@ mod tests {
             let found = std::fs::read_to_string(&path).unwrap_or_default();
             assert!(found == wanted, "{path} is not up to date");
         }
-        assert!(schema("assess").is_none());
+        assert!(schema("response").is_none());
     }
 
     #[test]

@@ -9,8 +9,8 @@ use super::{CommandLine, LimitReached};
 use crate::diagnostics::{Code, Diagnostic};
 use crate::netlist::expr::Expr as Node;
 use crate::netlist::{
-    Asked, AskedCases, Case, CaseId, Clauses, Keep, Metric, Pair, ParamId, Request, RequestKind, Requirement,
-    RequirementKind, Stimulus,
+    Asked, AskedCases, Case, CaseId, Clauses, DisplayUnit, Keep, Metric, Pair, ParamId, Request, RequestKind,
+    Requirement, RequirementKind, Stimulus,
 };
 use crate::source::Span;
 use crate::syntax::ast::{self, ExprKind, Name, StatementKind, Subject};
@@ -489,7 +489,7 @@ impl<'a> Writer<'a> {
         id: ast::ExprId,
         metric: &Metric,
         ctx: Context,
-    ) -> Result<(Bound, Option<String>), LimitReached> {
+    ) -> Result<(Bound, Option<DisplayUnit>), LimitReached> {
         let file = &self.loaded.files[ctx.file];
         let expr = file.tree.expr(id);
         let needed = self.dimension_of(metric);
@@ -507,7 +507,8 @@ impl<'a> Writer<'a> {
                     let d = Diagnostic::new(Code::UnitMismatch, "decibels are for ratios, and this figure is none");
                     return Ok((self.broken(d.label(expr.span, "in dB"), ctx), None));
                 }
-                return Ok((value, Some(text)));
+                let scale = self.net.exprs.push(Node::Ratio(1, 1), expr.span);
+                return Ok((value, Some(DisplayUnit { text, scale })));
             }
             let angular = matches!(metric, Metric::Crossover(_) | Metric::Bandwidth(_));
             let mut value = self.bind(if angular { inner } else { id }, ctx)?;
@@ -518,7 +519,9 @@ impl<'a> Writer<'a> {
             if let Some(needed) = needed {
                 self.expect(value, needed, "this figure", ctx);
             }
-            return Ok((value, Some(text)));
+            let scale = if angular { unit.angular_scale() } else { unit.scale };
+            let scale = self.scale_value(&scale, expr.span);
+            return Ok((value, Some(DisplayUnit { text, scale })));
         }
         let value = self.bind(id, ctx)?;
         if let Some(needed) = needed {

@@ -1,5 +1,6 @@
 //! Results as plain data: made once, rendered many times. The JSON documents are these types, key by key.
 
+pub mod assess;
 pub mod mason;
 mod terms;
 
