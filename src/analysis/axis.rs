@@ -2,7 +2,7 @@
 //! positive roots to many more digits than a double holds. No frequency grid decides anything here.
 
 use super::quasi::{difference, sum};
-use crate::algebra::{IBig, RBig, UBig, dense, stability};
+use crate::algebra::{IBig, RBig, UBig, dense, roots, stability};
 use dashu_base::BitTest;
 
 /// Binary digits of a root: enough that a resonance with a damping ratio of 1e-8 is still met to double precision.
@@ -135,21 +135,43 @@ pub(crate) fn positive_roots(p: &[IBig]) -> Vec<AxisRoot> {
     if signs.windows(2).all(|w| w[0] == w[1]) {
         return Vec::new();
     }
-    let found = stability::real_roots(&p, PARTED_BITS);
-    let mut simple: Option<Vec<IBig>> = None;
-    let mut out = Vec::new();
-    for root in found.into_iter().filter(|r| r.high > RBig::ZERO) {
-        let function: &[IBig] = if root.multiplicity == 1 {
-            &p
-        } else {
-            simple.get_or_insert_with(|| {
-                let common = dense::gcd(&p, &dense::derivative(&p));
-                dense::divide_exactly(&p, &common).unwrap_or_else(|| p.clone())
-            })
-        };
-        out.push(AxisRoot { x: refined(function, &root.low, &root.high), multiplicity: root.multiplicity });
+    from_certified(&p).unwrap_or_else(|| from_intervals(&p))
+}
+
+/// By the certified roots, of which one knows which are real: a change of sign about each of them starts its refinement.
+/// `None` where roots lie too close together for that.
+fn from_certified(p: &[IBig]) -> Option<Vec<AxisRoot>> {
+    let found = roots::roots(p).ok()?;
+    let simple = if found.iter().all(|r| r.multiplicity == 1) { p.to_vec() } else { square_free(p) };
+    let mut out: Vec<AxisRoot> = Vec::new();
+    for root in found.iter().filter(|r| r.im == 0.0 && r.re > 0.0) {
+        let reach = root.radius.max(root.re * 4.0 * f64::EPSILON) * 2.0;
+        if reach >= root.re {
+            return None;
+        }
+        let (low, high) = (near(root.re - reach), near(root.re + reach));
+        let sign = |x: &RBig| dyadic(x).sign(&simple);
+        let apart = out.last().is_none_or(|last| last.x.to_f64() < root.re - 2.0 * reach);
+        if !apart || sign(&low) * sign(&high) >= 0 {
+            return None;
+        }
+        out.push(AxisRoot { x: refined(&simple, &low, &high), multiplicity: root.multiplicity });
     }
-    out
+    Some(out)
+}
+
+/// By isolation of the real roots in exact arithmetic.
+fn from_intervals(p: &[IBig]) -> Vec<AxisRoot> {
+    let simple = square_free(p);
+    let found = stability::real_roots(p, PARTED_BITS);
+    let root = |r: stability::RealRoot| AxisRoot { x: refined(&simple, &r.low, &r.high), multiplicity: r.multiplicity };
+    found.into_iter().filter(|r| r.high > RBig::ZERO).map(root).collect()
+}
+
+/// The polynomial with each of its roots once.
+fn square_free(p: &[IBig]) -> Vec<IBig> {
+    let common = dense::gcd(p, &dense::derivative(p));
+    dense::divide_exactly(p, &common).unwrap_or_else(|| p.to_vec())
 }
 
 /// A dyadic number from a ratio whose denominator is a power of two.
@@ -273,6 +295,9 @@ mod tests {
         assert_eq!(found[1].x.to_f64(), 3.0);
         let square = &found[0].x.m * &found[0].x.m - (IBig::from(2) << (2 * found[0].x.k));
         assert!(square.bit_len() + 80 < 2 * found[0].x.k, "{:?}", found[0].x);
+        // Both ways to the roots agree.
+        let other: Vec<f64> = from_intervals(&p).iter().map(|r| r.x.to_f64()).collect();
+        assert_eq!(found.iter().map(|r| r.x.to_f64()).collect::<Vec<_>>(), other);
     }
 
     #[test]
