@@ -312,3 +312,27 @@ fn each_code_has_a_page_whose_example_has_it_and_whose_mend_has_no_error() {
     }
     assert!(wrong.is_empty(), "{}", wrong.concat());
 }
+
+#[test]
+fn assess_says_what_fails_by_its_status() {
+    let f = folder("assess");
+    write(&f, "good.loop", format!("{GOOD}require stable\nrequire phase_margin at u >= 60 [deg]\n"));
+    write(&f, "slow.loop", format!("{GOOD}require settling_time y/r <= 100 [ms]\n"));
+    write(&f, "open.loop", GOOD.replace("24", "Kx").replace("sum", "param Kx\nparam Ky\nsum"));
+    let good = run(&f, &["assess", "good.loop"]);
+    assert!(out(&good).starts_with("servo: stable; all 2 requirements hold\n"), "{}", out(&good));
+    assert_eq!((status(&good), err(&good)), (0, String::new()));
+    let slow = run(&f, &["assess", "slow.loop", "--format", "json"]);
+    assert_eq!(status(&slow), 1);
+    let requirement = &json(&slow)["cases"][0]["requirements"][0];
+    assert_eq!((&requirement["holds"], &requirement["unit"]), (&false.into(), &"ms".into()));
+    assert_eq!((requirement["line"].as_i64(), requirement["required"].as_f64()), (Some(8), Some(100.0)));
+    // Only what has no value and matters is told, once; nothing is worked out.
+    let open = run(&f, &["assess", "open.loop"]);
+    assert_eq!((status(&open), out(&open).as_str()), (2, ""));
+    assert_eq!(err(&open).matches("parameter-without-value").count(), 1, "{}", err(&open));
+    assert_eq!(status(&run(&f, &["assess", "open.loop", "--set", "Kx=24"])), 0);
+    let sarif = run(&f, &["assess", "slow.loop", "--format", "sarif"]);
+    assert_eq!((status(&sarif), &json(&sarif)["runs"][0]["results"][0]["level"]), (1, &"error".into()));
+    assert!(out(&run(&f, &["assess", "slow.loop", "--format", "junit"])).contains("<failure"));
+}

@@ -88,7 +88,7 @@ fn extreme(r: &Response, a: &[IBig], b: &[IBig], bound: &RBig, frequency: Option
             let common = dense::gcd(&f, &dense::derivative(&f));
             let inside = common.len() > 1 && has_root_between(&common, &low, &high);
             // The end of a band, where it is a number with few digits.
-            let end = frequency.filter(|_| r.axis == Axis::Continuous).map(|w| near(w));
+            let end = frequency.filter(|_| r.axis == Axis::Continuous).map(near);
             inside || end.is_some_and(|w| vanishes(&f, &(&w * &w)))
         }
     }

@@ -217,7 +217,8 @@ impl Response {
             let shortest = longest.filter(|d| *d > 0.0).fold(f64::INFINITY, f64::min);
             let high = high + 2.0 * PI * most as f64 * 2.0 / shortest;
             let part = Part { f: &self.num, g: &self.den };
-            let found = search::zeros(&part, low, high, From::Low, MAX_CROSSINGS)?;
+            // Every other place is negative where the response turns; no more are needed than are told.
+            let found = search::zeros(&part, low, high, From::Low, MAX_CROSSINGS.min(2 * most + 8))?;
             let places = found.into_iter().map(|w| (w, self.at(w)));
             let negative: Vec<_> = places.filter(|(_, v)| v.re < 0.0 && v.is_finite()).collect();
             more = negative.len() > most || self.ratio.num.terms.last().is_some_and(|t| t.0 != RBig::ZERO);
@@ -230,12 +231,21 @@ impl Response {
         }
         match self.at_infinity() {
             AtInfinity::Value(v) if v < 0.0 && !constant => {
-                out.push(Place { frequency: self.axis.end(), value: real(v) })
+                out.push(Place { frequency: self.axis.end(), value: real(v) });
             }
             AtInfinity::Turning(v) if v > 0.0 => out.push(Place { frequency: None, value: real(-v) }),
             _ => {}
         }
         Ok((out, more))
+    }
+
+    /// The magnitude that a response of neutral type nears for ever, and a millionth more: where it stays below, the
+    /// search ends, so that what is found is within a millionth of the limit.
+    fn tail(&self) -> f64 {
+        match self.at_infinity() {
+            AtInfinity::Turning(v) => v * (1.0 + 1e-6),
+            AtInfinity::Value(_) | AtInfinity::Unbounded => 0.0,
+        }
     }
 
     /// The largest magnitude over all frequencies.
@@ -261,7 +271,7 @@ impl Response {
         let start = best(&ends, |a, b| a > b);
         let (low, _) = self.range(1.0);
         let sampled = self.coarse(|v| v.norm()).into_iter().fold(start.value, f64::max);
-        let (_, high) = self.range(sampled.max(f64::MIN_POSITIVE));
+        let (_, high) = self.range(sampled.max(self.tail()).max(f64::MIN_POSITIVE));
         let f = Magnitude { f: &self.num, g: &self.den };
         let found = search::maximum(&f, low, high, start.value * start.value)?;
         Ok(found.map_or(start, |(x, y)| Extreme { value: libm::sqrt(y), frequency: Some(self.axis.frequency(x)) }))
@@ -292,7 +302,7 @@ impl Response {
         let (low, _) = self.range(1.0);
         let sampled = self.coarse(|v| (v + 1.0).norm()).into_iter().fold(start.value, f64::min);
         // Beyond, abs(L) stays below 1 - sampled.
-        let (_, high) = self.range((1.0 - sampled).max(1e-6));
+        let (_, high) = self.range((1.0 - sampled).max(1e-6).max(self.tail()));
         let magnitude = Magnitude { f: &f, g: &g };
         let found = search::maximum(&magnitude, low, high, 1.0 / (start.value * start.value))?;
         Ok(found

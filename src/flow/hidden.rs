@@ -17,6 +17,9 @@ use crate::source::Span;
 /// The largest order of a netlist whose modes `check` looks at: it is run at each key of an editor.
 const MAX_STATES: u32 = 60;
 
+/// The most named transfer functions that are looked at: each is worked out.
+const MAX_NAMED: usize = 60;
+
 /// What is known of one named transfer function.
 struct Shown<'a> {
     named: &'a Named,
@@ -32,7 +35,10 @@ struct Shown<'a> {
 pub(super) fn modes(wiring: &Wiring<'_>, laws: &Laws<'_>) -> Vec<Diagnostic> {
     let net = wiring.netlist;
     let all = named::all(net);
-    if all.is_empty() || net.time_base == TimeBase::Mixed || Part::whole(wiring).rows.len() > named::MAX_ROWS {
+    if all.is_empty() || all.len() > MAX_NAMED || net.time_base == TimeBase::Mixed {
+        return Vec::new();
+    }
+    if states(wiring, laws).is_none_or(|states| states > MAX_STATES) {
         return Vec::new();
     }
     let Ok((whole, _)) = characteristic::whole(wiring, laws) else { return Vec::new() };
@@ -70,6 +76,15 @@ pub(super) fn modes(wiring: &Wiring<'_>, laws: &Laws<'_>) -> Vec<Diagnostic> {
         out.push(tell(wiring, laws, &f, &from));
     }
     out
+}
+
+/// At most how many states a netlist has, or `None` where it is too large or a law has no value.
+fn states(wiring: &Wiring<'_>, laws: &Laws<'_>) -> Option<u32> {
+    let rows = Part::whole(wiring).rows;
+    if rows.len() > named::MAX_ROWS {
+        return None;
+    }
+    rows.iter().try_fold(0, |sum, &v| Some(sum + laws.row(wiring, v, |_| true).ok()?.left.degree(Var::S)))
 }
 
 /// Whether a requirement speaks of all modes, so that none is hidden from it.

@@ -150,8 +150,8 @@ impl Teller<'_, '_> {
         let point = super::residue::Point::new(crate::algebra::prime::Prime::first(), 0);
         let prime = &point.prime;
         let value = |f: &Fraction| prime.mul(point.of(f.numerator()), prime.inverse(point.of(f.denominator())));
-        let mut system = super::residue::Residues::default();
-        system.rows = vec![std::collections::BTreeMap::new(); self.tangle.signals.len()];
+        let rows = vec![std::collections::BTreeMap::new(); self.tangle.signals.len()];
+        let mut system = super::residue::Residues { rows, ..Default::default() };
         for (i, row) in system.rows.iter_mut().enumerate() {
             row.insert(i, prime.one);
         }

@@ -358,6 +358,83 @@ fn algebraic_loops_are_told() {
     assert_eq!(derived.diagnostics.len(), 1);
 }
 
+/// Codes of what `check` tells.
+fn codes(net: &Net) -> Vec<crate::diagnostics::Code> {
+    check(&net.net).iter().map(|d| d.code).collect()
+}
+
+/// A lag or a dead time anywhere on a loop breaks it; a law with a part that is not delayed does not.
+#[test]
+fn lags_and_dead_times_break_loops() {
+    use crate::diagnostics::Code::AlgebraicLoop;
+    assert_eq!(codes(&single_loop((&[4], &[1]), (&[1], &[2, 3]))), []);
+    assert_eq!(codes(&single_loop((&[1, 4], &[1, 0]), (&[1, 1], &[2, 3]))), [AlgebraicLoop]);
+    let with_delay = |part_of_it: bool| {
+        let mut net = Net::new();
+        net.input("r");
+        net.output("y");
+        net.sum("e", "r -y");
+        let mut law = net.delay(2);
+        if part_of_it {
+            let one = net.number(1, 1);
+            law = net.push(Expr::Sub(one, law));
+        }
+        net.block("C", "e", "y", law);
+        codes(&net)
+    };
+    assert_eq!(with_delay(false), []);
+    assert_eq!(with_delay(true), [AlgebraicLoop]);
+}
+
+/// Two loops through one block: both are told, with det(I - D) = 1 + 2 + 3, and the block they share breaks both.
+#[test]
+fn tangled_loops_are_told_together() {
+    let mut net = Net::new();
+    net.input("r");
+    net.output("y");
+    net.sum("e", "r -f -g");
+    for (name, from, to, gain) in [("C", "e", "y", 1), ("F", "y", "f", 2), ("G", "y", "g", 3)] {
+        let law = net.number(gain, 1);
+        net.block(name, from, to, law);
+    }
+    let told = check(&net.net);
+    assert_eq!(told.len(), 1, "{told:?}");
+    let message = &told[0].message;
+    for part in ["2 algebraic loops share 4 blocks and sums", "`F -> e -> C -> F` with gain -2", "D is 6"] {
+        assert!(message.contains(part), "{part}: {message}");
+    }
+    assert_eq!(told[0].help.as_deref(), Some("a lag or a dead time at `C` breaks all of them"));
+    assert_eq!(told[0].labels.len(), 5, "the sum twice, once for each signal that it reads");
+}
+
+/// A loop whose gain grows without bound has a solution, s²/(s² + s + 1), and is told as what it is.
+#[test]
+fn a_growing_loop_is_told() {
+    let net = single_loop((&[1, 0, 0], &[1]), (&[1], &[1, 1]));
+    let told = check(&net.net);
+    assert!(told[0].message.contains("grows without bound, as -s at high frequency"), "{}", told[0].message);
+}
+
+/// Past the limit of loops the rule says so, and elimination answers all the same.
+#[test]
+fn masons_rule_has_a_limit() {
+    let mut net = Net::new();
+    net.input("r");
+    net.output("x0");
+    let count = 8;
+    for i in 0..count {
+        let terms: Vec<String> = (0..count).filter(|j| *j != i).map(|j| format!("x{j}")).collect();
+        net.sum(&format!("e{i}"), &format!("r {}", terms.join(" ")));
+        let law = net.ratio(&[1], &[1, i + 2]);
+        net.block(&format!("B{i}"), &format!("e{i}"), &format!("x{i}"), law);
+    }
+    net.find("x0", "r");
+    let told = mason(&net.net, &net.net.requests[0]).expect_err("16,064 loops");
+    assert_eq!(told[0].code, crate::diagnostics::Code::LimitReached);
+    assert!(told[0].message.contains("more than 2000"), "{}", told[0].message);
+    assert_eq!(results(&net.derive()).len(), 1);
+}
+
 /// (Kd s + Kp)/(s² + Kd s + Kp): an improper controller is no algebraic loop around a double integrator.
 #[test]
 fn an_improper_controller_in_a_proper_loop() {
@@ -448,7 +525,7 @@ fn random(seed: u64) -> (Net, Numbers, Vec<Vec<(usize, f64)>>) {
     for k in 0..count {
         let mut terms = if k == count - 1 || dice.below(3) == 0 { "r".to_owned() } else { String::new() };
         let mut row: Vec<(usize, f64)> = if terms.is_empty() { Vec::new() } else { vec![(count, 1.0)] };
-        for _ in 0..1 + dice.below(2) {
+        for _ in 0..=dice.below(2) {
             let (from, minus) = (dice.below(count as u64) as usize, dice.below(2) == 0);
             terms.push_str(&format!(" {}x{from}", if minus { "-" } else { "" }));
             row.push((from, if minus { -1.0 } else { 1.0 }));

@@ -292,7 +292,7 @@ fn one_loop(page: &mut Page<'_>, l: &LoopFigures, all: bool) -> io::Result<()> {
         facts.push(("crossover".to_owned(), vec![format!("{} rad/s", rounded_float(w, DIGITS))]));
     }
     facts.extend(l.notes.iter().map(|n| ("note".to_owned(), vec![n.clone()])));
-    reasons(&mut facts, &l.absent, all && l.absent.get("gain_margins").is_none());
+    reasons(&mut facts, &l.absent, all && !l.absent.contains_key("gain_margins"));
     page.facts(&facts)
 }
 
@@ -329,4 +329,123 @@ fn transfer(page: &mut Page<'_>, t: &TransferFigures, all: bool) -> io::Result<(
     }
     reasons(&mut facts, &t.absent, all);
     page.facts(&facts)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::{junit, sarif};
+    use super::*;
+    use crate::results::assess::{GainFigure, PhaseFigure};
+    use crate::source::Span;
+
+    fn requirement(text: &str, line: usize, holds: bool, value: Option<f64>, slack: Option<f64>) -> RequirementFigure {
+        RequirementFigure {
+            text: text.into(),
+            file: "a b.loop".into(),
+            line,
+            holds,
+            value,
+            unit: Some("deg".into()),
+            required: slack.map(|_| 45.0),
+            slack,
+            frequency: None,
+            why: value.is_none().then(|| "the loop is not stable".into()),
+            span: Span::NONE,
+        }
+    }
+
+    /// A document with one case, a loop, and requirements of all three ends.
+    fn document() -> Assess {
+        let case = CaseFigures {
+            name: "nominal".into(),
+            variable: "s",
+            stability: StabilityFigures {
+                stable: true,
+                right_half_plane: Some(Some(0)),
+                on_axis: Some(Some(0)),
+                outside_circle: None,
+                on_circle: None,
+                method: "routh, exact".into(),
+                dead_time_windows: None,
+                absent: Absent::new(),
+            },
+            modes: vec![Mode {
+                re: -1.0,
+                im: 0.0,
+                multiplicity: 2,
+                frequency: Some(1.0),
+                damping_ratio: Some(1.0),
+                hidden_from: vec!["y/r".into()],
+            }],
+            absent: Absent::new(),
+            loops: vec![LoopFigures {
+                at: "u".into(),
+                open: vec![],
+                stable: true,
+                gain_margins: Some(vec![GainFigure { factor: 10.0, frequency: None }]),
+                phase_margins: Some(vec![PhaseFigure { degrees: 40.5, frequency: 2.0 }]),
+                delay_margin: None,
+                modulus_margin: None,
+                crossover: Some(2.0),
+                absent: Absent::new(),
+                notes: vec![],
+            }],
+            transfers: vec![],
+            requirements: vec![
+                requirement("phase_margin at v >= 40 & <x>", 7, true, Some(52.0), Some(7.0)),
+                requirement("phase_margin at u >= 45 [deg]", 8, false, Some(40.5), Some(-4.5)),
+            ],
+        };
+        let cases = vec![case];
+        Assess { schema: "loopwright.assess.1", model: "m".into(), ok: true, diagnostics: vec![], cases }
+    }
+
+    fn text(document: &Assess) -> String {
+        let mut out = Vec::new();
+        assess(document, false, TextOptions::default(), &mut out).expect("a vector takes it");
+        String::from_utf8(out).expect("UTF-8")
+    }
+
+    #[test]
+    fn the_verdict_stands_first_and_the_caution_last() {
+        let told = text(&document());
+        let lines: Vec<&str> = told.lines().collect();
+        assert_eq!(lines[0], "m: stable; 1 of 2 requirements fails");
+        assert!(lines[1].starts_with("worst: a b.loop:8 phase_margin at u >= 45 [deg]: found 40.5 deg"), "{told}");
+        assert!(
+            told.trim_end().ends_with("prevail.") && told.matches(CAUTION.split(':').next().unwrap_or("")).count() == 1
+        );
+        assert!(lines.iter().all(|l| l.width() <= 80), "{told}");
+        let (fails, holds) = (told.find("FAILS line 8"), told.find("holds line 7"));
+        assert!(fails < holds && fails.is_some() && told.contains("10 (20 dB) as ω → ∞"), "{told}");
+    }
+
+    /// The members that the standard requires (OASIS SARIF 2.1.0, sections 3.13, 3.14, 3.18, 3.27) and the place.
+    #[test]
+    fn sarif_has_what_the_standard_requires() {
+        let log = sarif(&document());
+        assert_eq!(log["version"], "2.1.0");
+        let run = &log["runs"][0];
+        assert_eq!(run["tool"]["driver"]["name"], "loopwright");
+        let results = run["results"].as_array().expect("a list");
+        assert_eq!(results.len(), 1);
+        let rules = run["tool"]["driver"]["rules"].as_array().expect("a list");
+        assert!(rules.iter().any(|r| r["id"] == results[0]["ruleId"]));
+        assert!(results[0]["message"]["text"].as_str().is_some_and(|t| t.contains("found 40.5 deg")));
+        let place = &results[0]["locations"][0]["physicalLocation"];
+        assert_eq!(place["artifactLocation"]["uri"], "a%20b.loop");
+        assert_eq!(place["region"]["startLine"], 8);
+    }
+
+    #[test]
+    fn junit_counts_and_escapes() {
+        let mut out = Vec::new();
+        junit(&document(), &mut out).expect("a vector takes it");
+        let told = String::from_utf8(out).expect("UTF-8");
+        assert!(told.contains(r#"<testsuites name="m" tests="2" failures="1" errors="0">"#), "{told}");
+        assert!(
+            told.contains("&gt;= 40 &amp; &lt;x&gt;") && told.contains(r#"<failure message="found 40.5 deg"/>"#),
+            "{told}"
+        );
+    }
 }

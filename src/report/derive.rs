@@ -253,11 +253,33 @@ fn symbols(t: &Transfer) -> Vec<&str> {
 fn why_no_roots(t: &Transfer, name: &str) -> Option<String> {
     let form = t.form.as_ref()?;
     let p = if name == "poles" { &form.denominator } else { &form.numerator };
-    if p.variables().into_iter().any(|v| naming(form, t.variable).is_delay(v)) {
-        let place = if name == "poles" { "below" } else { "above" };
-        return Some(format!("infinitely many: there is a dead time {place} the rule"));
+    let place = if name == "poles" { "below" } else { "above" };
+    match (delays(p, naming(form, t.variable)), p.len()) {
+        (Delays::None, _) => {}
+        (Delays::Alone, 1) if p.degree(Var::S) == 0 => return Some("none".to_owned()),
+        (Delays::Alone, _) => return Some(format!("not listed: there is a dead time {place} the rule")),
+        (Delays::InSum, _) => return Some(format!("infinitely many: there is a dead time {place} the rule")),
     }
     Some(format!("not worked out for degree {} unless --roots asks for them", p.degree(Var::S)))
+}
+
+/// How dead times stand in a polynomial.
+enum Delays {
+    /// There is none.
+    None,
+    /// The same one in every term: it is a factor.
+    Alone,
+    /// Different ones, or some terms without.
+    InSum,
+}
+
+fn delays(p: &Poly, naming: Naming<'_>) -> Delays {
+    if !p.variables().into_iter().any(|v| naming.is_delay(v)) {
+        return Delays::None;
+    }
+    let mut each = p.terms().map(|(m, _)| m.into_iter().filter(|p| naming.is_delay(p.0)).collect::<Vec<_>>());
+    let first = each.next();
+    if each.all(|d| Some(&d) == first.as_ref()) { Delays::Alone } else { Delays::InSum }
 }
 
 /// The gain at s = 0 or z = 1, exact where it can be; and whether it is rounded.

@@ -188,7 +188,7 @@ y / r = ───────────────────
          2·s + exp(-0.1·s)
 
   poles           infinitely many: there is a dead time below the rule
-  zeros           infinitely many: there is a dead time above the rule
+  zeros           none
   gain at s = 0   1
 "
     );

@@ -142,7 +142,7 @@ impl Writer<'_> {
 
     pub(super) fn bind_number(&mut self, text: &str, span: Span) -> Result<Bound, LimitReached> {
         let id = match numbers::small_decimal(text) {
-            Some((n, d)) if n <= i32::MAX as u64 && d <= u64::from(u32::MAX) => {
+            Some((n, d)) if i32::try_from(n).is_ok() && u32::try_from(d).is_ok() => {
                 let g = gcd(n, d);
                 self.net.exprs.push(Node::Ratio((n / g) as i32, (d / g) as u32), span)
             }

@@ -111,8 +111,8 @@ impl Writer<'_> {
                 if self.notes[sum.output.index()].dimension.is_some() {
                     continue;
                 }
-                let range = sum.first_term as usize..(sum.first_term + sum.term_count) as usize;
-                let found = range.filter_map(|t| self.term_dimension(t)).next();
+                let mut range = sum.first_term as usize..(sum.first_term + sum.term_count) as usize;
+                let found = range.find_map(|t| self.term_dimension(t));
                 if found.is_some() {
                     self.notes[sum.output.index()].dimension = found;
                     changed = true;

@@ -274,7 +274,7 @@ impl<'a> Writer<'a> {
                 match &statement.kind {
                     StatementKind::Find(find) if Some(file) == keep_file => match &find.clauses.keep {
                         ast::Keep::Names(names) => {
-                            kept.extend(names.iter().filter_map(|n| self.param_at(*n, Self::root(file))))
+                            kept.extend(names.iter().filter_map(|n| self.param_at(*n, Self::root(file))));
                         }
                         ast::Keep::All | ast::Keep::Nothing => self.keep_all(),
                     },

@@ -284,6 +284,10 @@ impl<'t> Place<'t> {
             ("=" | ";" | "", Some(Word::Block | Word::Define | Word::Repeat)) if self.in_index() => {
                 "a `{` that touches a name is an index: put a space before the `{` of a body"
             }
+            ("=", Some(Word::Block)) if self.rest.starts_with("=>") => "the arrow is `->`",
+            ("..", _) if self.before.contains("sum(") || self.before.contains("product(") => {
+                "a range of an index is written `sum(k in 1..3, …)`"
+            }
             ("*", _) if self.before.ends_with('*') => "a power is written with `^`",
             ("=", _) if self.before.ends_with('=') => "write one `=`",
             ("=", Some(Word::Require)) => "a comparison is `>=`, `<=`, `>` or `<`",
@@ -292,6 +296,7 @@ impl<'t> Place<'t> {
             ("+", _) if self.expects("a value") => "leave the `+` out",
             ("[", Some(Word::Define)) if self.expects("a value") => "a matrix stands only as the law of a `block`",
             ("[", _) if self.expects("a value") => "a unit stands after its value, such as `3 [N*m]`",
+            (",", _) if number_before && self.decimal_comma() => "a decimal has a point, such as `0.5`",
             (",", Some(Word::Input | Word::Output | Word::Signal | Word::Param)) => "declare one name a line",
             ("/", Some(Word::Find)) if self.text.contains("loop") || self.text.contains("zeros") => {
                 "`find loop` and `find zeros` stand alone on their line"
@@ -311,9 +316,34 @@ impl<'t> Place<'t> {
                 "the `{` of a body stands on the line of its statement, after a space"
             }
             (_, Some(Word::Model)) if self.expects(told_end()) => "a description stands between `\"`",
-            _ => return None,
+            _ => return self.form().map(|form| format!("its form is {form}")),
         };
         Some(help.to_owned())
+    }
+
+    /// Whether digits follow a comma at once: `0,5`.
+    fn decimal_comma(&self) -> bool {
+        self.rest.get(1..).is_some_and(|after| after.starts_with(|c: char| c.is_ascii_digit()))
+    }
+
+    /// How a statement of this kind is written.
+    fn form(&self) -> Option<&'static str> {
+        Some(match self.word? {
+            Word::Model => "`model NAME \"description\"`",
+            Word::Use => "`use \"path/to/file.loop\"`",
+            Word::Unit => "`unit NAME = NUMBER [UNIT]`",
+            Word::Param => "`param NAME = VALUE [UNIT]`",
+            Word::Input => "`input NAME [UNIT] \"description\"`",
+            Word::Output => "`output NAME [UNIT] \"description\"`",
+            Word::Signal => "`signal NAME [UNIT] \"description\"`",
+            Word::Sum => "`sum NAME = a - b + 0.5*c`",
+            Word::Block => "`block NAME : INPUT -> OUTPUT = LAW`",
+            Word::Define => "`define NAME(PARAMETERS) = LAW`, or with `: INPUTS -> OUTPUTS { … }`",
+            Word::Repeat => "`repeat k in 1..8 {`",
+            Word::Case => "`case NAME { PARAM = VALUE }`",
+            Word::Find => "`find y / r`, `find loop at u` or `find all`",
+            Word::Require => "`require FIGURE at u >= VALUE`, or with `y/r` in place of `at u`",
+        })
     }
 }
 

@@ -149,7 +149,7 @@ def main():
                 why = "%s: %s" % (type(error).__name__, error)
             if why:
                 wrong += 1
-                print("%d blocks, seed %d: %s" % (blocks, options.seed * 1_000_003 + i, why))
+                print("%d blocks, seed %d: %s" % (blocks, options.seed * 1_000_003 + i, why), flush=True)
     print("derive against python-flint: %d netlists, %d differ" % (options.count, wrong))
     return 1 if wrong else 0
 

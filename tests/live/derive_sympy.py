@@ -271,7 +271,7 @@ def main():
             counts[kind] += 1
             if why:
                 wrong += 1
-                print("%s: %s" % (name, why))
+                print("%s: %s" % (name, why), flush=True)
                 print("    " + "\n    ".join(netlist.lines))
     print("derive against sympy: %(well)d netlists and %(ill)d ill-posed ones," % counts, "%d differ" % wrong)
     return 1 if wrong or counts["well"] < options.count * 0.8 else 0

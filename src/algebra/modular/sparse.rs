@@ -174,7 +174,7 @@ pub(super) fn condense(mut rows: Vec<Row>, factor: IBig) -> Condensed {
         }
         // Only rows of `column` have changed, and only in columns of row i.
         let touched: Vec<usize> = uses[column].iter().copied().filter(|&k| k != i).collect();
-        for (j, _) in rest.entries.iter() {
+        for (j, _) in &rest.entries {
             uses[*j].retain(|&k| k != i);
             for &k in &touched {
                 let has = rows[k].entry(*j).is_some();

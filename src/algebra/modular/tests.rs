@@ -35,7 +35,7 @@ fn determinant(a: &[Vec<Poly>]) -> Poly {
         let minor: Vec<Vec<Poly>> =
             a[1..].iter().map(|r| r.iter().enumerate().filter(|t| t.0 != j).map(|t| t.1.clone()).collect()).collect();
         let term = c.mul(&determinant(&minor));
-        sum = if j % 2 == 0 { sum.add(&term) } else { sum.sub(&term) };
+        sum = if j.is_multiple_of(2) { sum.add(&term) } else { sum.sub(&term) };
     }
     sum
 }
@@ -146,7 +146,7 @@ fn larger_systems_satisfy_their_equations() {
                 if row.iter().all(|t| t.0 != j) {
                     let c =
                         if i % 2 == 0 { p(&[random.signed(999), random.signed(99)]) } else { p(&[random.signed(999)]) };
-                    if !c.is_zero() && (i % 2 == 0 || j % 2 == 0) {
+                    if !c.is_zero() && (i % 2 == 0 || j.is_multiple_of(2)) {
                         row.push((j, c));
                     }
                 }

@@ -26,8 +26,6 @@ fn power_of_two(k: i64) -> f64 {
 impl Wide {
     /// 0.
     pub(super) const ZERO: Self = Self { re: 0.0, im: 0.0, exp: 0 };
-    /// 1.
-    pub(super) const ONE: Self = Self { re: 1.0, im: 0.0, exp: 0 };
 
     /// (re + i·im)·2^exp; the parts are finite and, unless 0, of moderate size.
     pub(super) fn new(re: f64, im: f64, exp: i64) -> Self {

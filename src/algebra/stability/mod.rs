@@ -207,7 +207,7 @@ pub fn real_count(coefficients: &[IBig], low: Option<&RBig>, high: Option<&RBig>
         return 0;
     }
     let chain = Chain::new(a, &dense::derivative(a));
-    let minus = |f: &[IBig]| if f.len() % 2 == 0 { -lead_sign(f) } else { lead_sign(f) };
+    let minus = |f: &[IBig]| if f.len().is_multiple_of(2) { -lead_sign(f) } else { lead_sign(f) };
     let at = |x: &RBig, f: &[IBig]| dense::sign_at(f, x.numerator(), &IBig::from(x.denominator().clone()));
     // Where an end is a multiple root every member vanishes; dividing by the last, the gcd, changes no sign elsewhere.
     let chain = chain.without_gcd();
