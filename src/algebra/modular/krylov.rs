@@ -9,6 +9,9 @@
 //! polynomial. So where its degree is the number of states it *is* the characteristic polynomial: nothing is left to
 //! chance. Where it is less, the caller tries other vectors, and in the end another method.
 
+// Only what is inlined into a function that enables AVX2 gets its instructions.
+#![allow(clippy::inline_always)]
+
 use super::super::prime::Prime;
 use super::lanes::{Four, Lanes, Primes, from_number, to_number};
 use super::program::{Input, Program, Sum};

@@ -5,6 +5,9 @@
 //! with a fused multiply-add). Every result is an exact residue, so vector registers and the scalar fallback give the
 //! same bytes.
 
+// Only what is inlined into a function that enables AVX2 gets its instructions.
+#![allow(clippy::inline_always)]
+
 /// Primes are below this.
 pub(super) const LIMIT: u64 = 1 << 50;
 /// 2^25: residues are split there, so that products with small numbers can be summed without rounding.

@@ -13,7 +13,7 @@ use dashu_int::IBig;
 use rayon::prelude::*;
 
 /// Bits of the first evaluation in more than double precision.
-pub(super) const FIRST_PRECISION: usize = 128;
+pub(super) const FIRST_PRECISION: usize = super::narrow::PRECISION;
 /// Bits at which the search ends: roots this close together are beyond any model.
 pub(super) const MOST_PRECISION: usize = 1 << 17;
 /// Most sweeps at one precision.
@@ -57,7 +57,7 @@ struct Discs {
 pub(super) fn isolate(exact: &[IBig], start: Vec<Wide>, symmetry: Symmetry) -> Result<Vec<Isolated>, RootsError> {
     let n = start.len();
     let lead = Wide::from_parts(&exact[n], &IBig::ZERO, 0).log2();
-    let points: Vec<Point> = start.into_iter().map(Point::from_wide).collect();
+    let points: Vec<Point> = start.into_iter().map(|w| Point::from_wide(w).rounded(FIRST_PRECISION)).collect();
     let mut discs = Discs { points, values: vec![f64::NAN; n], radii: vec![f64::INFINITY; n] };
     let mut precision = FIRST_PRECISION;
     let mut open: Vec<usize> = (0..n).collect();
@@ -94,7 +94,8 @@ impl Discs {
     fn sweep(&mut self, rounded: &Rounded, open: &[usize], precision: usize) {
         let mut moving = open.to_vec();
         for _ in 0..SWEEPS {
-            let steps: Vec<Option<(Wide, bool)>> = moving.par_iter().map(|&i| self.step(rounded, i)).collect();
+            let near = self.near();
+            let steps: Vec<Option<(Wide, bool)>> = moving.par_iter().map(|&i| self.step(rounded, &near, i)).collect();
             let mut next = Vec::new();
             for (&i, step) in moving.iter().zip(steps) {
                 let Some((step, more)) = step else { continue };
@@ -111,15 +112,20 @@ impl Discs {
         }
     }
 
+    /// The approximations in double precision.
+    fn near(&self) -> Vec<Wide> {
+        self.points.iter().map(Point::to_wide).collect()
+    }
+
     /// The correction of one root and whether more of them are worth while; `None` where its value is mere noise.
-    fn step(&self, rounded: &Rounded, i: usize) -> Option<(Wide, bool)> {
+    fn step(&self, rounded: &Rounded, near: &[Wide], i: usize) -> Option<(Wide, bool)> {
         let at = rounded.at(&self.points[i], true);
         if at.value.log2() < at.value_error {
             return None;
         }
         let (mut pull, mut nearest) = (Wide::ZERO, f64::INFINITY);
         for (j, other) in self.points.iter().enumerate().filter(|t| t.0 != i) {
-            let difference = self.points[i].minus(other);
+            let difference = self.points[i].apart(near[i], other, near[j]);
             // Two approximations in one place: any small move parts them.
             let Some(reciprocal) = difference.recip() else {
                 let nudge = Wide::new(1.0, if i > j { 0.5 } else { -0.5 }, -40);
@@ -148,10 +154,11 @@ impl Discs {
             self.values[i] = v;
         }
         let log_n = libm::log2(n as f64);
+        let near = self.near();
         // log 2 of all distances; -∞ where two approximations are in one place, which makes their radii infinite.
         let distances: Vec<Vec<f64>> = (0..n)
             .into_par_iter()
-            .map(|i| (0..i).map(|j| self.points[i].minus(&self.points[j]).log2()).collect())
+            .map(|i| (0..i).map(|j| self.points[i].apart(near[i], &self.points[j], near[j]).log2()).collect())
             .collect();
         let distance = |i: usize, j: usize| if i > j { distances[i][j] } else { distances[j][i] };
         self.radii = (0..n)
@@ -160,11 +167,17 @@ impl Discs {
                 log_n + self.values[i] - lead - product + SLACK
             })
             .collect();
-        (0..n).into_par_iter().map(|i| self.judge(i, symmetry, &distance)).collect()
+        (0..n).into_par_iter().map(|i| self.judge(i, symmetry, &near, &distance)).collect()
     }
 
     /// What is proved of root `i`; `None` where its disc is not far enough from the others yet.
-    fn judge(&self, i: usize, symmetry: Symmetry, distance: &impl Fn(usize, usize) -> f64) -> Option<Isolated> {
+    fn judge(
+        &self,
+        i: usize,
+        symmetry: Symmetry,
+        near: &[Wide],
+        distance: &impl Fn(usize, usize) -> f64,
+    ) -> Option<Isolated> {
         let n = self.points.len();
         let radius = self.radii[i];
         let mut gap = f64::INFINITY;
@@ -180,18 +193,20 @@ impl Discs {
         if radius + libm::log2(4.0 * n as f64) > gap {
             return None;
         }
-        let only = |image: &dyn Fn(&Point) -> f64, image_radius: f64| {
-            let mut met = (0..n).filter(|&j| image(&self.points[j]) - SLACK <= log_sum(image_radius, self.radii[j]));
+        let only = |image: &dyn Fn(usize) -> f64, image_radius: f64| {
+            let mut met = (0..n).filter(|&j| image(j) - SLACK <= log_sum(image_radius, self.radii[j]));
             let first = met.next()?;
             met.next().is_none().then_some(first)
         };
         // The image of a root is a root. Where the image of its disc meets one disc only, that is where it is.
         let point = &self.points[i];
         let conjugate = point.conjugate();
-        let pair = only(&|other| conjugate.minus(other).log2(), radius)?;
+        let image = conjugate.to_wide();
+        let pair = only(&|j| conjugate.apart(image, &self.points[j], near[j]).log2(), radius)?;
         let on_axis = symmetry.axis && {
             let mirrored = point.mirrored();
-            only(&|other| mirrored.minus(other).log2(), radius)? == i
+            let image = mirrored.to_wide();
+            only(&|j| mirrored.apart(image, &self.points[j], near[j]).log2(), radius)? == i
         };
         let on_circle = symmetry.circle && {
             // |1/conj(z) - 1/conj(c)| ≤ r/((|c| - r)·|c|) for |z - c| ≤ r; here r ≤ |c|/2.
@@ -200,7 +215,7 @@ impl Discs {
                 return None;
             }
             let image_radius = radius - 2.0 * modulus + 1.0 + SLACK;
-            only(&|other| point.circle_defect(other).log2() - modulus, image_radius)? == i
+            only(&|j| point.circle_defect(&self.points[j]).log2() - modulus, image_radius)? == i
         };
         Some(Isolated { point: point.clone(), gap, conjugate: pair, on_axis, on_circle })
     }

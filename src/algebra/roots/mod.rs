@@ -10,6 +10,7 @@
 //! is a root, and where the image of its disc meets no disc but its own, the root is its own image.
 
 mod isolate;
+mod narrow;
 mod point;
 mod refine;
 mod start;

@@ -1,6 +1,7 @@
 //! Complex numbers of any precision, and exact polynomials evaluated there with a bound on the error.
 
 use super::super::dense::bits;
+use super::narrow::{self, Narrow};
 use super::wide::Wide;
 use dashu_int::IBig;
 
@@ -43,6 +44,12 @@ impl Point {
         let (a, b) = self.aligned(other);
         Wide::from_parts(&(a.re - b.re), &(a.im - b.im), a.exp)
     }
+    /// self - other to 2^-30 of itself, from their values in double precision where these are far enough apart.
+    pub(super) fn apart(&self, near: Wide, other: &Self, other_near: Wide) -> Wide {
+        let quick = near.sub(other_near);
+        let far = !quick.is_zero() && quick.exp > near.exp.max(other_near.exp) - 20;
+        if far { quick } else { self.minus(other) }
+    }
     /// self + step, rounded to `precision` bits of the modulus.
     pub(super) fn plus(&self, step: Wide, precision: usize) -> Self {
         let (a, b) = self.aligned(&Self::from_wide(step));
@@ -74,6 +81,8 @@ impl Point {
 pub(super) struct Rounded {
     /// Mantissa and exponent of each coefficient, lowest power first.
     coefficients: Vec<(IBig, i64)>,
+    /// The same in 128 bits, at that precision.
+    narrow: Vec<Narrow>,
     /// Moduli of the coefficients.
     moduli: Vec<Wide>,
     /// Bits kept everywhere.
@@ -133,7 +142,7 @@ impl Running {
 impl Rounded {
     /// The polynomial to `precision` bits a coefficient.
     pub(super) fn new(exact: &[IBig], precision: usize) -> Self {
-        let coefficients = exact
+        let coefficients: Vec<(IBig, i64)> = exact
             .iter()
             .map(|c| {
                 let shift = bits(c).saturating_sub(precision);
@@ -141,7 +150,12 @@ impl Rounded {
             })
             .collect();
         let moduli = exact.iter().map(|c| Wide::from_parts(c, &IBig::ZERO, 0).abs()).collect();
-        Self { coefficients, moduli, precision }
+        let narrow = if precision == narrow::PRECISION {
+            coefficients.iter().map(|(c, e)| Narrow::new(c, &IBig::ZERO, *e)).collect()
+        } else {
+            Vec::new()
+        };
+        Self { coefficients, narrow, moduli, precision }
     }
     /// Degree.
     pub(super) fn degree(&self) -> usize {
@@ -154,6 +168,22 @@ impl Rounded {
     /// derivative's below n²·2^(5-precision)·S/|z|. Four times as much is claimed.
     pub(super) fn at(&self, z: &Point, with_slope: bool) -> Value {
         let n = self.degree();
+        let (value, slope) =
+            if self.narrow.is_empty() { self.horner(z, with_slope) } else { self.narrow(z, with_slope) };
+        let modulus = z.to_wide().abs();
+        let sum = self.moduli.iter().rev().fold(Wide::ZERO, |s, &a| s.mul(modulus).add(a));
+        let value_error = sum.log2() + libm::log2(n as f64 + 1.0) + 6.0 - self.precision as f64;
+        Value {
+            value: value.to_wide(),
+            slope: slope.to_wide(),
+            value_error,
+            slope_error: value_error + libm::log2(n as f64 + 1.0) + 1.0 - modulus.log2(),
+        }
+    }
+
+    /// The values in integers of any length.
+    fn horner(&self, z: &Point, with_slope: bool) -> (Point, Point) {
+        let n = self.degree();
         let (top, top_exp) = &self.coefficients[n];
         let mut value = Running { re: top.clone(), im: IBig::ZERO, exp: *top_exp };
         let mut slope = Running { re: IBig::ZERO, im: IBig::ZERO, exp: 0 };
@@ -163,14 +193,21 @@ impl Rounded {
             }
             value.step(z, (c, None, *e), self.precision);
         }
-        let modulus = z.to_wide().abs();
-        let sum = self.moduli.iter().rev().fold(Wide::ZERO, |s, &a| s.mul(modulus).add(a));
-        let value_error = sum.log2() + libm::log2(n as f64 + 1.0) + 6.0 - self.precision as f64;
-        Value {
-            value: Wide::from_parts(&value.re, &value.im, value.exp),
-            slope: Wide::from_parts(&slope.re, &slope.im, slope.exp),
-            value_error,
-            slope_error: value_error + libm::log2(n as f64 + 1.0) + 1.0 - modulus.log2(),
+        let point = |r: Running| Point { re: r.re, im: r.im, exp: r.exp };
+        (point(value), point(slope))
+    }
+
+    /// The values in integers of 128 bits.
+    fn narrow(&self, z: &Point, with_slope: bool) -> (Point, Point) {
+        let z = Narrow::new(&z.re, &z.im, z.exp);
+        let mut value = self.narrow[self.degree()];
+        let mut slope = Narrow::default();
+        for &c in self.narrow[..self.degree()].iter().rev() {
+            if with_slope {
+                slope = slope.step(z, value);
+            }
+            value = value.step(z, c);
         }
+        (value.point(), slope.point())
     }
 }
