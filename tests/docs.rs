@@ -58,7 +58,7 @@ fn blocks(document: &str) -> Vec<Block> {
     while let Some((_, line)) = lines.next() {
         if let Some(info) = line.strip_prefix("```") {
             let body: Vec<(usize, &str)> = lines.by_ref().take_while(|(_, line)| *line != "```").collect();
-            let text: String = body.iter().map(|(_, line)| format!("{line}\n")).collect();
+            let text: String = body.iter().flat_map(|(_, line)| [*line, "\n"]).collect();
             let line = body.first().map_or(0, |(i, _)| *i);
             found.push(Block { info: info.to_owned(), text, line, comment: comment.take() });
         } else if let Some(start) = line.strip_prefix("<!--") {
@@ -192,7 +192,7 @@ fn run_console(folder: &Path, block: &str) -> Result<String, String> {
 
 /// Trailing blanks are no part of what is shown.
 fn trimmed(text: &str) -> String {
-    text.lines().map(|line| format!("{}\n", line.trim_end())).collect()
+    text.lines().flat_map(|line| [line.trim_end(), "\n"]).collect()
 }
 
 #[test]

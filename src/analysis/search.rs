@@ -6,7 +6,7 @@
 //! 1966, chapters 6 and 7).
 
 /// The most intervals that one search looks at: more than any response with a bounded number of oscillations needs.
-const MAX_INTERVALS: usize = 400_000;
+const MAX_INTERVALS: usize = 4_000_000;
 
 /// Relative width below which an interval is not halved any more: some units of the last place of a double.
 const LEAST_WIDTH: f64 = 4e-15;

@@ -717,11 +717,7 @@ fn closing(open: char) -> char {
 
 /// Whether a line that ends in this text goes on in the next: after `,` `=` `->`, an operator, a comparison or `..`.
 fn line_goes_on(line: &[u8]) -> bool {
-    match line {
-        [.., b',' | b'=' | b'+' | b'-' | b'*' | b'/' | b'^' | b'<' | b'>'] => true,
-        [.., b'.', b'.'] => true,
-        _ => false,
-    }
+    matches!(line, [.., b',' | b'=' | b'+' | b'-' | b'*' | b'/' | b'^' | b'<' | b'>'] | [.., b'.', b'.'])
 }
 
 /// The diagnostic for more than [`MAX_NESTING`] levels.

@@ -22,7 +22,7 @@ impl Basis {
     pub(super) fn new(primes: &[u64]) -> Self {
         let fields: Vec<Prime> = primes.iter().map(|&p| Prime::new(p)).collect();
         let product = product(primes);
-        let words = |c: &UBig| c.as_words().iter().copied().collect::<Vec<u64>>();
+        let words = |c: &UBig| c.as_words().to_vec();
         let cofactors = primes.iter().map(|&p| words(&(&product / UBig::from(p)))).collect();
         let inverses = fields
             .iter()
