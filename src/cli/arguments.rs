@@ -97,7 +97,7 @@ pub(super) enum Fraction {
     Expanded,
     /// Products of factors such as (s + 2)
     Factored,
-    /// Products of factors such as (0.5 [s]·s + 1)
+    /// Products of factors such as (0.5·s + 1), times in seconds
     TimeConstants,
 }
 

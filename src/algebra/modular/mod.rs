@@ -1,13 +1,13 @@
 //! Large numeric systems, exactly: determinant and solutions of A(s) x = b(s), whole coefficients, one variable.
 //!
-//! 1. Rows of constants are eliminated where that costs little ([`sparse`]).
-//! 2. The rest becomes a state machine ([`program`]): det A(s) = det L·det(sI - M).
-//! 3. Modulo four primes of 50 bits at a time ([`lanes`]), a Krylov sequence of M is run and its minimal generating
-//!    polynomial found ([`krylov`]). That is det(sI - M) wherever its degree is the number of states; otherwise the
+//! 1. Rows of constants are eliminated where that costs little (`sparse`).
+//! 2. The rest becomes a state machine (`program`): det A(s) = det L·det(sI - M).
+//! 3. Modulo four primes of 50 bits at a time (`lanes`), a Krylov sequence of M is run and its minimal generating
+//!    polynomial found (`krylov`). That is det(sI - M) wherever its degree is the number of states; otherwise the
 //!    sequence of arbitrary vectors is tried, and where that falls short as well (M has an eigenvalue with two
 //!    independent eigenvectors), or where L has no triangular form, elimination at points and interpolation
-//!    ([`points`]) does the same.
-//! 4. Chinese remainders ([`remainders`]) give the integers.
+//!    (`points`) does the same.
+//! 4. Chinese remainders (`remainders`) give the integers.
 //!
 //! **How sure.** Modulo each prime, everything is exact. How many primes are needed is bounded by Hadamard's inequality;
 //! mostly fewer do. Once a weighted sum of all coefficients no longer changes over [`SPARE`] further primes, the integers
